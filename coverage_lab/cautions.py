@@ -1,0 +1,98 @@
+"""The sentences that stand beside a verdict: what the figures rest on, and what they cannot say."""
+
+import pandas as pd
+
+from coverage_lab.records import Measurements, Plan, Verdict
+from coverage_lab.rounding import percent, proportion
+
+DISAGREEMENT = 1e-3  # cross-check p-values below this are a warning of their own
+
+ALWAYS = (
+    "Every figure is conditional on the planned range and on the sampling model; none says anything about bias: who was "
+    "not reached, what was misclassified, what was lost.",
+    "Fix the method, the confidence and the side before data are seen, and report that interval whatever it shows.",
+    "These results support, and never replace, qualified statistical review and the rules that apply where the study is "
+    "done.",
+)
+
+
+def cautions(measured: Measurements, methods: pd.DataFrame, verdict: Verdict) -> tuple[str, ...]:
+    """The cautions that this audit calls for, the gravest first."""
+    plan = measured.plan
+    found = [*_disagreement(measured), *_too_small(plan, verdict), *_outside(plan, methods, verdict)]
+    found += [verdict.balance] if verdict.balance else []
+    return (*found, *_of_side(plan), *_of_zero(plan), *_of_simulation(plan), *ALWAYS)
+
+
+def _disagreement(measured: Measurements) -> list[str]:
+    """The two routes do not agree: nothing else on the page counts."""
+    check = measured.cross_check
+    if check is None or min(check.p_value, check.chi_square_p) >= DISAGREEMENT:
+        return []
+    return [
+        "The simulated and the enumerated route disagree more than chance allows "
+        f"(p = {min(check.p_value, check.chi_square_p):.1g}): do not use this report before the cause is found."
+    ]
+
+
+def _too_small(plan: Plan, verdict: Verdict) -> list[str]:
+    """Even the most extreme outcome excludes nothing in the planned range."""
+    small = verdict.too_small
+    if small is None:
+        return []
+    near_one = small["limit"] <= plan.outcome.low
+    events, word = (f"{verdict.n} events in {verdict.n}", "lower") if near_one else ("0 events", "upper")
+    needed = f"; n = {small['n_needed']} would" if small["n_needed"] else ""
+    limit = proportion(small["limit"], "down" if near_one else "up")
+    return [
+        f"n = {verdict.n} is too small to learn from: even {events} would give the {word} limit {limit} and exclude "
+        f"nothing in the planned range{needed}."
+    ]
+
+
+def _outside(plan: Plan, methods: pd.DataFrame, verdict: Verdict) -> list[str]:
+    """What happens when the true proportion is not in the planned range."""
+    if verdict.method is None or verdict.holds_on is None:
+        return []
+    low, high = verdict.holds_on
+    row = methods[(methods["n"] == verdict.n) & (methods["method"] == verdict.method)].iloc[0]
+    if low <= 0 and high >= 1:
+        return [f"The {row['label']} meets the standard at n = {verdict.n} for every true proportion, not only the planned."]
+    everywhere = row["everywhere_minimum_coverage"]
+    worst = f"; over all proportions its coverage can fall to {percent(everywhere, 'down')}" if everywhere == everywhere else ""
+    return [
+        f"The range {percent(plan.outcome.low)} to {percent(plan.outcome.high)} is your claim. The {row['label']} meets the "
+        f"standard for true proportions from {percent(low, 'up')} to {percent(high, 'down')}{worst}."
+    ]
+
+
+def _of_side(plan: Plan) -> list[str]:
+    """What a one-sided confidence means beside a two-sided one."""
+    if plan.side == "two-sided":
+        return []
+    matching = percent(1 - 2 * plan.alpha) if plan.alpha < 0.5 else None
+    twin = f" is the matching limit of a two-sided {matching} interval, and" if matching else ":"
+    return [
+        f"A one-sided {percent(plan.confidence)} bound{twin} spends all of its error on one side; confirmatory work often "
+        "asks for 2.5 % on that side."
+    ]
+
+
+def _of_zero(plan: Plan) -> list[str]:
+    """Zero events are likely, and not zero risk."""
+    if min(plan.sizes) * plan.outcome.low > 5:  # noqa: PLR2004 - zero events are then rarer than e^-5
+        return []
+    return [
+        "Zero events is not zero risk: it leaves every proportion up to the upper limit open. Do not switch to a one-sided "
+        "bound because the count came out as zero; the side is part of the plan."
+    ]
+
+
+def _of_simulation(plan: Plan) -> list[str]:
+    """What a simulated minimum is worth."""
+    if "simulated" not in plan.simulation.routes:
+        return []
+    return [
+        "A simulated minimum over many proportions is biased low, since it picks the unluckiest cell; exact minima are "
+        "stated where they could be computed."
+    ]

@@ -1,0 +1,120 @@
+"""The order of a measurement: list the cells, draw, measure every n, look at the neighbours of n, compare the routes."""
+
+from collections.abc import Mapping
+from pathlib import Path
+
+import pandas as pd
+
+from coverage_lab.engine import size, work
+from coverage_lab.engine.bounds import inapplicable
+from coverage_lab.engine.cross import cross_check, goodness_of_fit
+from coverage_lab.engine.exact import figures, listed
+from coverage_lab.engine.means import Range
+from coverage_lab.engine.measures import MEASURES
+from coverage_lab.engine.size import Support, Table
+from coverage_lab.records import Measurements, Method, Outcomes, Plan
+
+NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
+ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
+
+FIGURES = (
+    *("minimum_coverage", "minimum_at", "minimum_is", "worst_miss", "mean_coverage", "mean_miss", *MEASURES),
+    *("simulated_coverage_min", "simulated_coverage_min_at", "simulated_coverage_mean"),
+    *("simulated_replicates", "simulated_standard_error", *(f"simulated_{name}" for name in MEASURES)),
+    *("everywhere_minimum_coverage", "everywhere_minimum_at"),
+)
+
+
+def measure(
+    plan: Plan, workers: int = 1, progress: work.Progress | None = None, keep: Path | None = None
+) -> Measurements:
+    """Measure every method of the plan that applies, at every n, by the plan's routes."""
+    listed_cells = work.cells(plan)
+    tallies: Mapping[work.Cell, Outcomes] = {}
+    if "simulated" in plan.simulation.routes:
+        tallies = work.simulate(plan, listed_cells, workers, progress, keep)
+    tables: tuple[list[Table], list[Table], list[Table]] = ([], [], [])
+    fits: list[tuple[float, int]] = []
+    for k, n in enumerate(plan.sizes):
+        cells = [cell for cell in listed_cells if cell.n == n]
+        found = size.support(plan, n, cells, tallies)
+        for block in size.method_blocks(applying(plan, n), found.size):
+            for table, rows in zip(tables, size.measure_block(plan, n, found, block), strict=True):
+                table.append(rows)
+        fits += _fits(found)
+        if progress is not None:
+            progress("measuring", (k + 1) / len(plan.sizes))
+    methods, cells_frame, curve = (_frame(table) for table in tables)
+    check = cross_check(cells_frame, fits) if len(plan.simulation.routes) > 1 else None
+    return Measurements(plan, _described(plan, methods), cells_frame, curve, steady(plan), check)
+
+
+def applying(plan: Plan, n: int) -> list[Method]:
+    """The plan's methods that can answer for its design, its side and this n."""
+    return [m for m in plan.methods if inapplicable(m, plan.design.columns, n, plan.side) is None]
+
+
+def steady(plan: Plan) -> pd.DataFrame:
+    """What the standard is judged by at n-3 … n+3, for every planned n: exact, or no rows.
+
+    The preferred methods always; all others too while that is quick.
+    """
+    rows: list[dict[str, object]] = []
+    over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
+    for planned in plan.sizes if "enumerated" in plan.simulation.routes else ():
+        for n in range(max(1, planned - NEIGHBOURS), planned + NEIGHBOURS + 1):
+            methods = [m for m in applying(plan, n) if m in plan.prefer or planned <= ALL_STEADY_UP_TO]
+            parts = listed(plan.design, methods, n, (over.low, over.high), plan.side, plan.tail) if methods else []
+            found = figures(parts, over, plan.side) if parts else []
+            rows += [{"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=False)]
+    return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss", "mean_width"])
+
+
+def _fits(found: Support) -> list[tuple[float, int]]:
+    """Goodness of fit of every cell that was both enumerated and drawn."""
+    laws = {item.p: item for item in found.cells if item.route == "enumerated"}
+    return [
+        goodness_of_fit(laws[item.p].outcomes, item.outcomes, (laws[item.p].samples, item.samples))
+        for item in found.cells
+        if item.route == "simulated" and item.p in laws
+    ]
+
+
+def _frame(tables: list[Table]) -> pd.DataFrame:
+    """Blocks of rows as one frame."""
+    return pd.concat([pd.DataFrame(table) for table in tables if table], ignore_index=True) if any(tables) else pd.DataFrame()
+
+
+def _described(plan: Plan, measured: pd.DataFrame) -> pd.DataFrame:
+    """One row per n and method of the plan, in the plan's order: what the method is, whether it applies, its figures."""
+    rows = []
+    for n in plan.sizes:
+        for method in plan.methods:
+            words = {name: getattr(method, name) for name in ("label", "family", "source", "formula", "ends", "faults")}
+            reason = inapplicable(method, plan.design.columns, n, plan.side)
+            rows.append({"n": n, "method": method.name, **words, "applies": reason is None, "reason": reason})
+    described = pd.DataFrame(rows)
+    if measured.empty:
+        return described.reindex(columns=[*described.columns, *FIGURES])
+    table = described.merge(measured, on=["n", "method"], how="left", validate="one_to_one")
+    return _only_simulated(table.reindex(columns=[*described.columns, *FIGURES]))
+
+
+def _only_simulated(table: pd.DataFrame) -> pd.DataFrame:
+    """Where no exact figure exists the simulated ones stand in, and say so."""
+    lacking = table["minimum_coverage"].isna() & table["simulated_coverage_min"].notna()
+    if not lacking.any():
+        return table.drop(columns=[f"simulated_{name}" for name in MEASURES])
+    stands_in = {
+        "minimum_coverage": table["simulated_coverage_min"],
+        "minimum_at": table["simulated_coverage_min_at"],
+        "minimum_is": "simulated",
+        "worst_miss": 1.0 - table["simulated_coverage_min"],
+        "mean_coverage": table["simulated_coverage_mean"],
+        "mean_miss": 1.0 - table["simulated_coverage_mean"],
+        **{name: table[f"simulated_{name}"] for name in MEASURES},
+    }
+    filled = table.assign(minimum_is=table["minimum_is"].astype(object))
+    for name, values in stands_in.items():
+        filled[name] = filled[name].where(~lacking, values)
+    return filled.drop(columns=[f"simulated_{name}" for name in MEASURES])

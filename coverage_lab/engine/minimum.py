@@ -1,0 +1,166 @@
+"""The certified infimum of coverage over a range of p: end points where the covering sets are runs, else branch-and-bound.
+
+Coverage at p of a binomial design is K(p) = sum of P(X = x) over the covering x. Between two neighbouring end points of
+the intervals the covering set is constant. When it is a run i..j, K' = n [b(i-1; n-1, p) - b(j; n-1, p)] changes sign
+once, from + to -, so the infimum over the segment is at one of its ends (Wang 2007, Stat. Sinica 17:361). Intervals are
+closed, so the value at an end point itself is never below its two limits and needs no look.
+"""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from coverage_lab.engine.branch import Runs, branch_and_bound
+from coverage_lab.probability import at_least, at_most
+from coverage_lab.records import Array, Minimum
+
+SAME = 1e-13  # end points closer than this, relatively, are one: exact limits share them up to rounding
+
+Chance = Callable[[Array], Array]
+
+
+@dataclass(frozen=True)
+class Piece:
+    """One binomial part of a design: with `weight`, X ~ Binomial(trials, chance(p)); limits for x = first, first+1, …"""
+
+    trials: int
+    weight: float
+    first: int
+    lower: Array
+    upper: Array
+
+
+@dataclass(frozen=True)
+class Segments:
+    """Open segments of the range with constant covering sets, and the miss rates at their two ends from inside.
+
+    `ordered` is False where some covering set is not a run: there the ends prove nothing.
+    """
+
+    left: Array
+    right: Array
+    miss_left: Array
+    miss_right: Array
+    ordered: NDArray[np.bool_]
+
+
+def identity(p: Array) -> Array:
+    """The chance of an event is the true proportion itself."""
+    return p
+
+
+def edges(pieces: Sequence[Piece], low: float, high: float) -> tuple[Array, Array]:
+    """Left and right ends of the segments into which the limits cut [low, high]."""
+    cuts = np.concatenate([limit for piece in pieces for limit in (piece.lower, piece.upper)])
+    ends = np.unique(np.concatenate([[low], cuts[(cuts > low) & (cuts < high)], [high]]))
+    left, right = ends[:-1], ends[1:]
+    real = right - left > SAME * right
+    return (left[real], right[real]) if real.any() else (np.array([low]), np.array([high]))
+
+
+def segments(pieces: Sequence[Piece], low: float, high: float, chance: Chance = identity) -> Segments:
+    """The segments of [low, high] with the miss rate at both ends of each."""
+    left, right = edges(pieces, low, high)
+    middle = (left + right) / 2
+    miss_left, miss_right = np.zeros(len(left)), np.zeros(len(left))
+    ordered = np.full(len(left), len(pieces) == 1)
+    for piece in pieces:
+        begin, end, run = _run(piece, middle)
+        ordered &= run
+        below, above = piece.first + begin - 1, piece.first + end
+        for miss, at in ((miss_left, chance(left)), (miss_right, chance(right))):
+            outside = at_most(below, piece.trials, at) + at_least(above, piece.trials, at)
+            miss += piece.weight * np.where(end > begin, outside, 1.0)
+    return Segments(left, right, miss_left, miss_right, ordered)
+
+
+def _run(piece: Piece, p: Array) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.bool_]]:
+    """For each p the covering positions begin..end-1, and whether they are known to be a run.
+
+    The limits' running maximum from the left and minimum from the right bracket every disorder: where both count the
+    same number of limits to the left of p, those limits are a prefix, however disordered the rest may be.
+    """
+    begin, run_upper = _prefix(piece.upper, p, side="left")
+    end, run_lower = _prefix(piece.lower, p, side="right")
+    return begin, end, run_upper & run_lower
+
+
+def _prefix(limits: Array, p: Array, side: str) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+    """How many leading limits lie left of p, and whether these are all that do. Sound for any order of the limits."""
+    from_left = np.maximum.accumulate(limits)
+    from_right = np.minimum.accumulate(limits[::-1])[::-1]
+    least = np.searchsorted(from_left, p, side=side)  # type: ignore[call-overload]
+    most = np.searchsorted(from_right, p, side=side)  # type: ignore[call-overload]
+    return least, least == most
+
+
+def minimum(pieces: Sequence[Piece], low: float, high: float, chance: Chance = identity) -> Minimum:
+    """The infimum of coverage over [low, high], certified; `at` is the p where it is approached.
+
+    Exact to rounding where the covering sets are runs of one binomial; elsewhere within 1e-10 by branch-and-bound.
+    """
+    if low == high:
+        return at_point(pieces, low, chance)
+    found = segments(pieces, low, high, chance)
+    best = _of_ordered(found)
+    if found.ordered.all():
+        return best
+    rest = ~found.ordered
+    runs = covering_runs(pieces, (found.left[rest] + found.right[rest]) / 2)
+    coverage, at = branch_and_bound(runs, found.left[rest], found.right[rest], chance, best.coverage)
+    return best if coverage >= best.coverage else Minimum(coverage, at, certified=True, miss=1.0 - coverage)
+
+
+def _of_ordered(found: Segments) -> Minimum:
+    """The largest miss at an end of a segment whose covering set is a run."""
+    left = np.where(found.ordered, found.miss_left, -1.0)
+    right = np.where(found.ordered, found.miss_right, -1.0)
+    i, j = int(np.argmax(left)), int(np.argmax(right))
+    miss, at = (left[i], found.left[i]) if left[i] >= right[j] else (right[j], found.right[j])
+    if miss < 0:
+        return Minimum(coverage=1.0, at=float(found.left[0]), certified=True, miss=0.0)
+    return Minimum(coverage=1.0 - float(miss), at=float(at), certified=True, miss=float(miss))
+
+
+def at_point(pieces: Sequence[Piece], p: float, chance: Chance = identity) -> Minimum:
+    """Coverage at one p, as the minimum of a range that is a single proportion."""
+    miss = 0.0
+    at = chance(np.array([p]))
+    for piece in pieces:
+        positions = np.arange(len(piece.lower)) + piece.first
+        covers = (piece.lower <= p) & (p <= piece.upper)
+        miss += piece.weight * _outside(*(positions[ends] for ends in _ends_of_runs(covers)), piece.trials, at)
+    return Minimum(coverage=1.0 - miss, at=p, certified=True, miss=miss)
+
+
+def _outside(first: NDArray[np.int64], last: NDArray[np.int64], n: int, p: Array) -> float:
+    """P(X in none of the runs first..last): what lies before, between and after them."""
+    if len(first) == 0:
+        return 1.0
+    between = at_least(last[:-1] + 1, n, p) - at_least(first[1:], n, p)
+    return float((at_most(first[0] - 1, n, p) + at_least(last[-1] + 1, n, p)).item() + between.sum())
+
+
+def _ends_of_runs(covers: NDArray[np.bool_]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """First and last positions of the runs of True."""
+    padded = np.concatenate([[False], covers, [False]]).astype(np.int8)
+    change = np.diff(padded)
+    return np.flatnonzero(change == 1), np.flatnonzero(change == -1) - 1
+
+
+def covering_runs(pieces: Sequence[Piece], p: Array) -> Runs:
+    """The runs of covering x at each p, all pieces together, sorted by segment."""
+    segment, trials, weight, first, last = [], [], [], [], []
+    for piece in pieces:
+        for k, value in enumerate(p):
+            begin, end = _ends_of_runs((piece.lower <= value) & (value <= piece.upper))
+            segment.append(np.full(len(begin), k))
+            trials.append(np.full(len(begin), piece.trials))
+            weight.append(np.full(len(begin), piece.weight))
+            first.append(piece.first + begin)
+            last.append(piece.first + end)
+    joined = [np.concatenate(column) for column in (segment, trials, weight, first, last)]
+    order = np.argsort(joined[0], kind="stable")
+    return Runs(len(p), *(column[order] for column in joined))

@@ -1,0 +1,211 @@
+"""From measurements to a recommendation: measure all, name few.
+
+Only a method of the plan's preference list can be named, and only when it meets the standard at n and at n-3 … n+3: "the
+shortest of all that pass" would, by the luck of the saw, name methods that no reviewer signs, and change its mind with n.
+"""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import pandas as pd
+
+from coverage_lab import reach
+from coverage_lab.records import Measurements, Plan, Verdict
+from coverage_lab.rounding import percent
+
+WIDER = 1.05  # a method gives way to a later one on the list that is this much narrower on average
+SIMULATION_MARGIN = 3.0  # standard errors a simulated figure must clear to pass or to fail
+LOPSIDED = 1.25  # times the tail: beyond this, misses on one side are said to dominate
+
+
+@dataclass(frozen=True)
+class Judgement:
+    """Whether a method meets the standard at one n: True, False, or None when that cannot be said, and why."""
+
+    passes: bool | None
+    why: str
+
+
+def thresholds(plan: Plan) -> tuple[float, float]:
+    """The largest worst miss rate and the largest mean miss rate that the standard allows."""
+    return plan.standard.worst_miss * plan.alpha, plan.standard.mean_miss * plan.alpha
+
+
+def meets(plan: Plan, worst_miss: float, mean_miss: float) -> bool:
+    """Whether exact figures meet the standard."""
+    worst, mean = thresholds(plan)
+    return bool(worst_miss <= worst and mean_miss <= mean)
+
+
+def judge(plan: Plan, row: Mapping[str, Any]) -> Judgement:
+    """One row of the methods table against the standard; simulated figures decide only beyond 3 standard errors."""
+    if not row["applies"]:
+        return Judgement(None, str(row["reason"]))
+    if pd.isna(row["worst_miss"]):
+        return Judgement(None, "not measured")
+    worst, mean = thresholds(plan)
+    margin = SIMULATION_MARGIN * row["simulated_standard_error"] if row["minimum_is"] == "simulated" else 0.0
+    excess = max(row["worst_miss"] - worst, row["mean_miss"] - mean)
+    figures = (
+        f"worst miss {percent(row['worst_miss'], 'up')} (at most {percent(worst)} allowed), "
+        f"mean miss {percent(row['mean_miss'], 'up')} (at most {percent(mean)} allowed)"
+    )
+    if excess <= -margin:
+        return Judgement(True, figures)
+    if excess > margin:
+        return Judgement(False, figures)
+    return Judgement(None, f"{figures}: within 3 Monte Carlo standard errors of the limit; more draws are needed")
+
+
+def judged(measured: Measurements) -> pd.DataFrame:
+    """The methods table with `passes` and `why`."""
+    judgements = [judge(measured.plan, row) for row in measured.methods.to_dict("records")]
+    passes = pd.Series([item.passes for item in judgements], dtype=object)
+    return measured.methods.assign(passes=passes, why=[item.why for item in judgements])
+
+
+def steady_at(measured: Measurements, n: int, method: str) -> tuple[Mapping[str, Any], ...]:
+    """Whether the method meets the standard at each n-3 … n+3 that was looked at."""
+    rows = measured.steady[(measured.steady["planned"] == n) & (measured.steady["method"] == method)]
+    return tuple(
+        {"n": int(row["n"]), "passes": meets(measured.plan, row["worst_miss"], row["mean_miss"])}
+        for row in rows.to_dict("records")
+    )
+
+
+def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
+    """The verdict for one planned n; `methods` is the judged table."""
+    plan = measured.plan
+    here = methods[methods["n"] == n].set_index("method", drop=False)
+    listed = [method.name for method in plan.prefer if here.loc[method.name, "applies"]]
+    holding = [name for name in listed if _holds_up(measured, here, n, name)]
+    named = _first_not_wide(here, holding)
+    status = "recommended" if named else _without_name(here, listed)
+    row = here.loc[named] if named else None
+    return Verdict(
+        n=n,
+        status=status,  # type: ignore[arg-type]
+        method=named,
+        sentence=_sentence(plan, n, here, listed, named, status),
+        prefer=tuple(method.name for method in plan.prefer),
+        steady=steady_at(measured, n, named) if named else (),
+        alternatives=_alternatives(measured, here, n, named),
+        closest=_closest(here, listed, n) if named is None else None,
+        too_small=reach.too_small(plan, n, named) if named else None,
+        holds_on=reach.holds_on(plan, n, named) if named and row is not None and row["minimum_is"] == "certified" else None,
+        balance=_balance(plan, row) if row is not None else None,
+        bounds_at=reach.bounds_at(plan, n, named) if named else (),
+    )
+
+
+def overall(by_n: Sequence[Verdict]) -> Verdict:
+    """The verdict at the smallest n with a recommendation; without one, an undecided one, else the last."""
+    for status in ("recommended", "undecided"):
+        for verdict in sorted(by_n, key=lambda item: item.n):
+            if verdict.status == status:
+                return verdict
+    return max(by_n, key=lambda item: item.n)
+
+
+def _holds_up(measured: Measurements, here: pd.DataFrame, n: int, name: str) -> bool:
+    """Meets the standard at n and, where that can be computed exactly, at every neighbour."""
+    return here.loc[name, "passes"] is True and all(item["passes"] for item in steady_at(measured, n, name))
+
+
+def _first_not_wide(here: pd.DataFrame, holding: Sequence[str]) -> str | None:
+    """The first that is at most 5 % wider on average than every later one."""
+    width = here["mean_width"]
+    for k, name in enumerate(holding):
+        if all(width[name] <= WIDER * width[later] for later in holding[k + 1 :]):
+            return name
+    return None
+
+
+def _without_name(here: pd.DataFrame, listed: Sequence[str]) -> str:
+    """Why nothing is named: undecided while a listed method could still pass."""
+    return "undecided" if any(here.loc[name, "passes"] is None for name in listed) else "none"
+
+
+def _alternatives(
+    measured: Measurements, here: pd.DataFrame, n: int, named: str | None
+) -> tuple[Mapping[str, Any], ...]:
+    """Every other method that meets the standard at n, its relative mean width, and what speaks against it."""
+    found = []
+    for row in here.to_dict("records"):
+        if row["passes"] is not True or row["method"] == named:
+            continue
+        relative = row["mean_width"] / here.loc[named, "mean_width"] if named else None
+        against = _against(measured, n, row["method"], relative)
+        found.append({"method": row["method"], "relative_width": relative, "against": against})
+    return tuple(found)
+
+
+def _against(measured: Measurements, n: int, name: str, relative: float | None) -> str:
+    """What speaks against naming this method."""
+    plan = measured.plan
+    method = next(method for method in plan.methods if method.name == name)
+    points = []
+    failing = [str(item["n"]) for item in steady_at(measured, n, name) if not item["passes"]]
+    if failing:
+        points.append(f"fails at n = {', '.join(failing)}")
+    if name not in [method.name for method in plan.prefer]:
+        points.append("not on the preference list")
+    elif not failing and relative is not None:
+        points.append(f"{percent(relative - 1)} wider on average" if relative > 1 else "later on the preference list")
+    if "upper" not in method.sides:
+        points.append("two-sided only")
+    return "; ".join(points)
+
+
+def _closest(here: pd.DataFrame, listed: Sequence[str], n: int) -> Mapping[str, Any] | None:
+    """The listed method with the smallest worst miss: closest, not recommended."""
+    measured = here.loc[[name for name in listed if pd.notna(here.loc[name, "worst_miss"])]]
+    if measured.empty:
+        return None
+    row = measured.loc[measured["worst_miss"].idxmin()]
+    figures = {name: float(row[name]) for name in ("worst_miss", "minimum_coverage", "minimum_at", "mean_coverage")}
+    return {"method": row["method"], "n": n, **figures}
+
+
+def _balance(plan: Plan, row: Any) -> str | None:
+    """A sentence when misses on one side dominate; two-sided intervals only."""
+    if plan.side != "two-sided":
+        return None
+    for name, words in (("missed_below", "too low"), ("missed_above", "too high")):
+        if row[name] > LOPSIDED * plan.tail:
+            return (
+                f"The interval is {words} in {percent(row[name])} of samples on average, against {percent(plan.tail)} "
+                "per side if misses were shared evenly; a question with one decisive end calls for a one-sided bound."
+            )
+    return None
+
+
+def _sentence(
+    plan: Plan, n: int, here: pd.DataFrame, listed: Sequence[str], named: str | None, status: str
+) -> str:
+    """The verdict in words, from the record that decided it."""
+    worst, mean = thresholds(plan)
+    standard = f"at least {percent(1 - worst, 'up')} everywhere in the planned range and {percent(1 - mean, 'up')} on average"
+    stated = ", ".join(here.loc[name, "label"] for name in listed)
+    if named:
+        row = here.loc[named]
+        only = "the only one on the stated list" if len(listed) == 1 else f"the first of the stated list ({stated}) that holds"
+        return (
+            f"At n = {n}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
+            f"{percent(row['minimum_coverage'], 'down')} everywhere in the planned range and "
+            f"{percent(row['mean_coverage'], 'down')} on average; the standard asks {standard}; {only}"
+            f"{'' if len(listed) > 1 else ', and it holds'}."
+        )
+    if status == "undecided":
+        return (
+            f"Undecided at n = {n}: the simulated figures of the stated list ({stated}) lie within 3 Monte Carlo standard "
+            f"errors of the standard ({standard}); more replicates are needed."
+        )
+    return f"No method on the stated list ({stated}) meets the standard at n = {n} and its neighbours: {standard}."
+
+
+def _form(plan: Plan) -> str:
+    """What is reported: an interval or a bound, with its confidence."""
+    level = percent(plan.confidence)
+    return f"interval at {level} confidence" if plan.side == "two-sided" else f"{plan.side} bound at {level} confidence"
