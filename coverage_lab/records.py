@@ -72,14 +72,36 @@ class Outcomes:
 
 @dataclass(frozen=True)
 class Part:
-    """One component of a fixed binomial mixture: with `weight`, the number of trials is `trials`."""
+    """One component of a fixed mixture: with `weight`, `trials` units are counted, each an event with `chance(p)`.
+
+    The count is binomial; where a `population` is given it is hypergeometric, p·population of its units being events.
+    `constants` are the columns that no sample varies in.
+    """
 
     trials: int
     weight: float
+    at_zero: float = 0.0
+    at_one: float = 1.0
+    population: int | None = None
+    constants: Columns = field(default_factory=dict)
+
+    def chance(self, p: Array) -> Array:
+        """The chance that a counted unit is recorded as an event: linear in the truth p, rising."""
+        return self.at_zero * (1 - p) + self.at_one * p
+
+    def columns(self, events: Counts) -> Columns:
+        """The samples with these events."""
+        return {"events": events, "trials": np.array([self.trials]), **self.constants}
 
 
 class Design(Protocol):
-    """How the sample arises from the truth p at planned size n."""
+    """How the sample arises from the truth p at planned size n.
+
+    Columns that a design may give: events, trials · population · clusters, events_squared (sum of x² over clusters),
+    events_by_size (of x·m), sizes_squared (of m²), planned_icc · stratum_events, stratum_trials, stratum_weights (axis
+    1 runs over strata) · sensitivity, specificity · diseased_tested, diseased_positive, healthy_tested,
+    healthy_negative.
+    """
 
     @property
     def kind(self) -> str:
@@ -99,10 +121,13 @@ class Design(Protocol):
         """The distinct samples with their exact probabilities, or None when they cannot be listed."""
 
     def parts(self, n: int) -> tuple[Part, ...] | None:
-        """The fixed binomial mixture behind the samples, or None."""
+        """The fixed mixture behind the samples, or None."""
 
     def points(self, low: float, high: float, n: int) -> Array | None:
         """The finite set of reachable truths in [low, high], or None when every p is reachable."""
+
+    def view(self, needs: frozenset[str]) -> "Design":
+        """The same design for methods that need no more than these columns: it may know more about fewer columns."""
 
 
 @dataclass(frozen=True)

@@ -5,38 +5,65 @@ from typing import ClassVar
 
 import numpy as np
 
+from coverage_lab.designs.frame import LARGEST_LAW, Frame, Units, compact, likely
+from coverage_lab.designs.lens import Lens
 from coverage_lab.probability import point, window
-from coverage_lab.records import Array, Columns, Outcomes, Part
+from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
+
+RAREST_PART = 1e-14  # evaluable numbers that are rarer are no part of a mixture: far below what branch-and-bound resolves
 
 
 @dataclass(frozen=True)
-class Simple:
+class Simple(Frame):
     """X events in n units: X ~ Binomial(n, p). Every p is reachable, every n is kept.
 
     Source: Cochran 1977, Sampling Techniques, ch. 3.
     """
 
     kind: ClassVar[str] = "simple"
-    columns: ClassVar[tuple[str, ...]] = ("events", "trials")
 
-    def settle(self, p: float, n: int) -> tuple[float, int]:
-        """The truth and the size as they are."""
-        return p, n
+    @property
+    def columns(self) -> tuple[str, ...]:
+        """What every sample has."""
+        return ("events", "trials")
 
-    def draw(self, p: float, n: int, size: int, rng: np.random.Generator) -> Columns:
-        """`size` binomial counts."""
-        return {"events": rng.binomial(n, p, size), "trials": np.array([n])}
+    def units(self, p: float, n: int, size: int, rng: np.random.Generator) -> Units:
+        """`size` binomial counts, one group."""
+        events = rng.binomial(n, p, size)[:, None]
+        return events, n - events
 
-    def law(self, p: float, n: int) -> Outcomes:
-        """The counts whose probability exceeds 1e-18, with their binomial probabilities."""
-        first, last = window(n, p, p)
+    def gather(self, events: Counts, others: Counts) -> Columns:
+        """Events and evaluable units."""
+        x = events.sum(axis=1)
+        return {"events": x, "trials": compact(x + others.sum(axis=1))}
+
+    def listed(self, p: float, n: int, lens: Lens) -> Outcomes | None:
+        """Trinomial in general: evaluable units binomial, and given these the events; binomial without losses."""
+        sizes, weight = evaluable(n, lens.kept_at(p), 1e-18)
+        chance = lens.chance(p)
+        first, last = window(int(sizes[0]), chance, chance)[0], window(int(sizes[-1]), chance, chance)[1]
+        if len(sizes) * (last - first + 1) > 10 * LARGEST_LAW:
+            return None
         events = np.arange(first, last + 1)
-        return Outcomes({"events": events, "trials": np.array([n])}, point(events, n, p))
+        if len(sizes) == 1:
+            return Outcomes({"events": events, "trials": sizes}, point(events, n, chance))
+        m = np.repeat(sizes, len(events))
+        x = np.tile(events, len(sizes))
+        return likely({"events": x, "trials": m}, np.repeat(weight, len(events)) * point(x, m, chance))
 
-    def parts(self, n: int) -> tuple[Part, ...]:
-        """One binomial part: all n units are evaluated."""
-        return (Part(trials=n, weight=1.0),)
+    def mixed(self, n: int, lens: Lens) -> tuple[Part, ...] | None:
+        """One binomial part for every evaluable number when losses do not depend on the outcome."""
+        if lens.kept is None:
+            return None
+        at_zero, at_one = lens.other[0] / lens.kept, lens.event[0] / lens.kept
+        sizes, weight = evaluable(n, lens.kept, RAREST_PART)
+        return tuple(Part(int(m), float(w), at_zero, at_one) for m, w in zip(sizes, weight, strict=True))
 
-    def points(self, low: float, high: float, n: int) -> Array | None:
-        """None: every p in [low, high] is reachable."""
-        return None
+
+def evaluable(n: int, kept: float, floor: float) -> tuple[Counts, Array]:
+    """The numbers of units kept of n with their probabilities, those above `floor`."""
+    if kept == 1:
+        return np.array([n]), np.ones(1)
+    first, last = window(n, kept, kept, floor)
+    sizes = np.arange(first, last + 1)
+    return sizes, point(sizes, n, kept)

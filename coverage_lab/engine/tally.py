@@ -1,6 +1,10 @@
-"""Equal samples counted once: the shape that both routes share."""
+"""Equal samples counted once: the shape that both routes share.
+
+A column is an array whose axis 0 runs over samples; further axes, such as strata, belong to the sample.
+"""
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -8,6 +12,7 @@ from numpy.typing import NDArray
 from coverage_lab.records import Columns, Counts, Outcomes
 
 _DENSE = 1 << 22  # largest key range that is counted in a dense array
+_LARGEST_KEY = (1 << 63) - 1
 
 
 def tally(columns: Columns, counts: Counts | None = None) -> tuple[Columns, Counts]:
@@ -19,40 +24,79 @@ def tally(columns: Columns, counts: Counts | None = None) -> tuple[Columns, Coun
     if not varying:
         size = 1 if counts is None else int(counts.sum())
         return columns, np.array([size], dtype=np.int64)
-    key, spans = _key(list(varying.values()))
-    if spans[-1] <= _DENSE:
-        total = np.bincount(key, weights=counts, minlength=1).astype(np.int64)
-        distinct = np.flatnonzero(total)
-        total = total[distinct]
-    else:
-        distinct, inverse = np.unique(key, return_inverse=True)
-        total = np.bincount(inverse, weights=counts).astype(np.int64)
-    return {**columns, **_decoded(distinct, varying, spans)}, total
+    group, first = _grouped(varying)
+    total = np.bincount(group, weights=counts, minlength=len(first)).astype(np.int64)
+    return {**columns, **{name: values[first] for name, values in varying.items()}}, total
 
 
-def _key(values: Sequence[NDArray[np.int64]]) -> tuple[Counts, list[int]]:
-    """One mixed-radix integer per sample, and the running product of the radices."""
-    key = np.zeros(len(values[0]), dtype=np.int64)
+def _grouped(varying: Columns) -> tuple[Counts, Counts]:
+    """For every sample the number of its group of equal samples, and for every group the place of one of its samples.
+
+    Whole-number columns make a key. What is a function of them, such as an estimate made of counts, needs no place in
+    it: that is verified, not assumed, and a column that is not gets its place.
+    """
+    flat = [column for values in varying.values() for column in _scalars(values)]
+    whole = [column for column in flat if column.dtype.kind in "iub"]
+    key = _key(_independent(whole)) if whole else np.zeros(len(flat[0]), dtype=np.int64)
+    group, first = _distinct(key)
+    for column in flat:
+        if not np.array_equal(column[first][group], column):
+            rank = np.unique(column, return_inverse=True)[1]
+            group, first = _distinct(_key([group, rank]))
+    return group, first
+
+
+def _scalars(values: NDArray[Any]) -> list[NDArray[Any]]:
+    """A column as columns of one number a sample."""
+    return [values] if values.ndim == 1 else list(values.reshape(len(values), -1).T)
+
+
+def _independent(columns: Sequence[Counts]) -> list[Counts]:
+    """The columns without those that are a straight line of the first one that varies."""
+    kept: list[Counts] = []
+    for column in columns:
+        if (column == column[0]).all():
+            continue
+        if not kept or not _on_a_line(kept[0], column):
+            kept.append(column)
+    return kept or [columns[0]]
+
+
+def _on_a_line(x: Counts, y: Counts) -> bool:
+    """Whether y = a + b·x with rational b, exactly; x varies."""
+    other = int(np.argmax(x != x[0]))
+    dx, dy = int(x[other] - x[0]), int(y[other] - y[0])
+    return bool(((y - y[0]) * dx == (x - x[0]) * dy).all())
+
+
+def _key(columns: Sequence[Counts]) -> Counts:
+    """One mixed-radix integer per sample, equal just for equal samples; compressed where 64 bits would not do."""
+    key = np.zeros(len(columns[0]), dtype=np.int64)
     span = 1
-    spans = []
-    for column in values:
+    for column in columns:
         low, high = int(column.min()), int(column.max())
-        key += (column - low) * span
+        if span * (high - low + 1) > _LARGEST_KEY:
+            distinct, key = np.unique(key, return_inverse=True)
+            span = len(distinct)
+        key = key + (column - low) * span
         span *= high - low + 1
-        spans.append(span)
-    if span > np.iinfo(np.int64).max:
-        raise OverflowError("samples take too many distinct values to be told apart by one 64-bit key")
-    return key, spans
+    return key
 
 
-def _decoded(key: Counts, varying: Columns, spans: list[int]) -> dict[str, Counts]:
-    """The columns behind the keys."""
-    columns = {}
-    below = 1
-    for (name, values), span in zip(varying.items(), spans, strict=True):
-        columns[name] = key // below % (span // below) + values.min()
-        below = span
-    return columns
+def _distinct(key: Counts) -> tuple[Counts, Counts]:
+    """The number of every key's group in ascending order of keys, and the place of one member of each group."""
+    low, span = int(key.min()), int(key.max()) - int(key.min()) + 1
+    if span <= _DENSE:
+        present = np.zeros(span, dtype=bool)
+        present[key - low] = True
+        group = (np.cumsum(present) - 1)[key - low]
+        groups = int(group.max()) + 1
+    else:
+        distinct, group = np.unique(key, return_inverse=True)
+        groups = len(distinct)
+    first = np.empty(groups, dtype=np.int64)
+    first[group] = np.arange(len(key))
+    return group, first
 
 
 def simulated(columns: Columns, counts: Counts) -> Outcomes:
@@ -65,7 +109,9 @@ def joined(samples: Sequence[Columns]) -> Columns:
     """Several lists of samples as one; a column that is the same everywhere becomes a constant."""
     sizes = [max(len(values) for values in columns.values()) for columns in samples]
     together = {
-        name: np.concatenate([np.broadcast_to(c[name], (k,)) for c, k in zip(samples, sizes, strict=True)])
+        name: np.concatenate(
+            [np.broadcast_to(c[name], (k, *c[name].shape[1:])) for c, k in zip(samples, sizes, strict=True)]
+        )
         for name in samples[0]
     }
     return {name: values[:1] if (values == values[0]).all() else values for name, values in together.items()}
@@ -86,6 +132,6 @@ def union(samples: Sequence[Columns]) -> tuple[Columns, list[Counts]]:
     varying = {name: values for name, values in columns.items() if len(values) > 1}
     if not varying:
         return columns, [np.zeros(k, dtype=np.int64) for k in sizes]
-    key, spans = _key(list(varying.values()))
-    distinct, inverse = np.unique(key, return_inverse=True)
-    return {**columns, **_decoded(distinct, varying, spans)}, np.split(inverse, np.cumsum(sizes)[:-1])
+    group, first = _grouped(varying)
+    distinct = {**columns, **{name: values[first] for name, values in varying.items()}}
+    return distinct, np.split(group, np.cumsum(sizes)[:-1])
