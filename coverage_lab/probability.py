@@ -60,6 +60,16 @@ def window(n: int, low: float, high: float, floor: float = 1e-18) -> tuple[int, 
     return first, n - back
 
 
+def likely(n: int, p: float, floor: float = 1e-18) -> tuple[int, int]:
+    """A range of counts outside which P(X <= first-1) and P(X >= last+1) are below `floor`, found without a search.
+
+    Bernstein's inequality: P(X - np >= t) <= exp(-t²/2(npq + t/3)), solved for t; wider than `window` by a few counts.
+    """
+    c = -math.log(floor)
+    reach = c / 3 + math.sqrt(c * c / 9 + 2 * c * n * p * (1 - p))
+    return max(0, math.floor(n * p - reach)), min(n, math.ceil(n * p + reach))
+
+
 def deviance(x: ArrayLike, m: ArrayLike) -> Array:
     """x·log(x/m) + m - x for x, m >= 0, without cancellation where x is near m."""
     x, m = _floats(x, m)
@@ -198,5 +208,3 @@ def _betabinomial_inside(x: Array, n: Array, a: Array, b: Array) -> Array:
         exponent = exponent + sign * _stirling_error(z)
     spread = (n / (x * y)) * (a * b / c) * ((n + c) / ((x + a) * (y + b)))
     return np.exp(exponent) * np.sqrt(spread / (2 * np.pi))
-
-

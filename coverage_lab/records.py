@@ -6,7 +6,7 @@ samples; an array of length 1 is a constant that broadcasts.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, field
 from decimal import Decimal
 from typing import TYPE_CHECKING, Any, Literal, Protocol
@@ -192,7 +192,7 @@ class Interval:
     raw_lower: float
     raw_upper: float
 
-    def __iter__(self) -> Any:
+    def __iter__(self) -> Iterator[float]:
         return iter((self.lower, self.upper))
 
 

@@ -5,8 +5,10 @@ from typing import ClassVar
 
 import numpy as np
 
-from coverage_lab.probability import point, window
+from coverage_lab.probability import likely, point
 from coverage_lab.records import Array, Columns, Outcomes, Part
+
+FLOOR = 1e-18  # a count less likely than this adds nothing that a double can hold
 
 
 @dataclass(frozen=True)
@@ -29,9 +31,11 @@ class Simple:
 
     def law(self, p: float, n: int) -> Outcomes:
         """The counts whose probability exceeds 1e-18, with their binomial probabilities."""
-        first, last = window(n, p, p)
+        first, last = likely(n, p)
         events = np.arange(first, last + 1)
-        return Outcomes({"events": events, "trials": np.array([n])}, point(events, n, p))
+        weight = point(events, n, p)
+        probable = weight > FLOOR
+        return Outcomes({"events": events[probable], "trials": np.array([n])}, weight[probable])
 
     def parts(self, n: int) -> tuple[Part, ...]:
         """One binomial part: all n units are evaluated."""
