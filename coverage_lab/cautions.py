@@ -5,14 +5,15 @@ import pandas as pd
 from coverage_lab.records import Measurements, Plan, Verdict
 from coverage_lab.rounding import percent, proportion
 
+ZERO_UNLIKELY = 5.0  # expected events from which zero is rarer than e^-5
 DISAGREEMENT = 1e-3  # cross-check p-values below this are a warning of their own
 
 ALWAYS = (
-    "Every figure is conditional on the planned range and on the sampling model; none says anything about bias: who was "
-    "not reached, what was misclassified, what was lost.",
+    "Every figure is conditional on the planned range and on the sampling model; none says anything about bias: who "
+    "was not reached, what was misclassified, what was lost.",
     "Fix the method, the confidence and the side before data are seen, and report that interval whatever it shows.",
-    "These results support, and never replace, qualified statistical review and the rules that apply where the study is "
-    "done.",
+    "These results support, and never replace, qualified statistical review and the rules that apply where the study "
+    "is done.",
 )
 
 
@@ -57,12 +58,13 @@ def _outside(plan: Plan, methods: pd.DataFrame, verdict: Verdict) -> list[str]:
     low, high = verdict.holds_on
     row = methods[(methods["n"] == verdict.n) & (methods["method"] == verdict.method)].iloc[0]
     if low <= 0 and high >= 1:
-        return [f"The {row['label']} meets the standard at n = {verdict.n} for every true proportion, not only the planned."]
+        return [f"The {row['label']} meets the standard at n = {verdict.n} for every true proportion."]
+    claim = f"{percent(plan.outcome.low)} to {percent(plan.outcome.high)}"
     everywhere = row["everywhere_minimum_coverage"]
-    worst = f"; over all proportions its coverage can fall to {percent(everywhere, 'down')}" if everywhere == everywhere else ""
+    worst = f"; over all proportions its coverage can fall to {percent(everywhere, 'down')}" if everywhere > 0 else ""
     return [
-        f"The range {percent(plan.outcome.low)} to {percent(plan.outcome.high)} is your claim. The {row['label']} meets the "
-        f"standard for true proportions from {percent(low, 'up')} to {percent(high, 'down')}{worst}."
+        f"The range {claim} is your claim. The {row['label']} meets the standard for true proportions from "
+        f"{percent(low, 'up')} to {percent(high, 'down')}{worst}."
     ]
 
 
@@ -71,20 +73,20 @@ def _of_side(plan: Plan) -> list[str]:
     if plan.side == "two-sided":
         return []
     matching = percent(1 - 2 * plan.alpha) if plan.alpha < 0.5 else None
-    twin = f" is the matching limit of a two-sided {matching} interval, and" if matching else ":"
+    twin = f" is the matching limit of a two-sided {matching} interval and" if matching else ""
     return [
-        f"A one-sided {percent(plan.confidence)} bound{twin} spends all of its error on one side; confirmatory work often "
-        "asks for 2.5 % on that side."
+        f"A one-sided {percent(plan.confidence)} bound{twin} spends all of its error on one side; confirmatory work "
+        "often asks for 2.5 % on that side."
     ]
 
 
 def _of_zero(plan: Plan) -> list[str]:
     """Zero events are likely, and not zero risk."""
-    if min(plan.sizes) * plan.outcome.low > 5:  # noqa: PLR2004 - zero events are then rarer than e^-5
+    if min(plan.sizes) * plan.outcome.low > ZERO_UNLIKELY:
         return []
     return [
-        "Zero events is not zero risk: it leaves every proportion up to the upper limit open. Do not switch to a one-sided "
-        "bound because the count came out as zero; the side is part of the plan."
+        "Zero events is not zero risk: it leaves every proportion up to the upper limit open. Do not switch to a "
+        "one-sided bound because the count came out as zero; the side is part of the plan."
     ]
 
 

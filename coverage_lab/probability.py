@@ -86,15 +86,15 @@ def hypergeometric_at_least(x: ArrayLike, n: ArrayLike, marked: ArrayLike, popul
     return hypergeometric_at_most(n - x, n, population - marked, population)
 
 
-def hypergeometric_window(n: int, population: int, low: int, high: int, floor: float = 1e-18) -> tuple[int, int]:
-    """First and last count of the smallest range outside which P(X = x) <= `floor` for every marked in [low, high].
+def likely(n: int, p: float, floor: float = 1e-18) -> tuple[int, int]:
+    """A range of counts outside which P(X <= first-1) and P(X >= last+1) are below `floor`, found without a search.
 
-    Both point probabilities, at `low` and at `high`, rise up to their modes and fall beyond them.
+    It holds for hypergeometric counts too, p·population of the units being marked (Hoeffding 1963).
+    Bernstein's inequality: P(X - np >= t) <= exp(-t²/2(npq + t/3)), solved for t; wider than `window` by a few counts.
     """
-    bottom, top = ((n + 1) * (marked + 1) // (population + 2) for marked in (low, high))
-    first = _first_true(lambda x: hypergeometric(x, n, low, population) > floor, 0, bottom)
-    back = _first_true(lambda y: hypergeometric(n - y, n, high, population) > floor, 0, n - min(top, n))
-    return first, n - back
+    c = -math.log(floor)
+    reach = c / 3 + math.sqrt(c * c / 9 + 2 * c * n * p * (1 - p))
+    return max(0, math.floor(n * p - reach)), min(n, math.ceil(n * p + reach))
 
 
 def deviance(x: ArrayLike, m: ArrayLike) -> Array:
@@ -139,21 +139,19 @@ def _first_true(test: Callable[[Counts], NDArray[np.bool_]], low: int, high: int
 
 def _hypergeometric_tail(x: Array, n: Array, marked: Array, population: Array) -> Array:
     """P(X <= x) added from x down, best where x is below the mean; finished elements drop out of the loop."""
-    shape = x.shape
-    x, n, marked, population = (values.ravel() for values in (x, n, marked, population))
-    x = np.minimum(x, np.minimum(n, marked))
-    term = hypergeometric(x, n, marked, population)
+    cases = np.stack([values.ravel() for values in (np.minimum(x, np.minimum(n, marked)), n, marked, population)])
+    term = hypergeometric(*cases)
     total = term.copy()
     active = np.flatnonzero(term > 0)
-    k, m, u = x[active], marked[active], (population - marked - n)[active]
-    s, term = n[active], term[active]
+    cases, term = cases[:, active], term[active]
     while active.size:
-        term = term * (k * (u + k)) / ((m - k + 1) * (s - k + 1))
+        k, s, m, size = cases
+        term = term * (k * (size - m - s + k)) / ((m - k + 1) * (s - k + 1))
         total[active] += term
-        k = k - 1
         going = term > _NEGLIGIBLE * total[active]
-        active, k, m, u, s, term = (values[going] for values in (active, k, m, u, s, term))
-    return total.reshape(shape)
+        active, term, cases = active[going], term[going], cases[:, going]
+        cases[0] -= 1
+    return total.reshape(x.shape)
 
 
 def _edge_point(x: Array, n: Array, p: Array) -> Array:
@@ -254,5 +252,3 @@ def _betabinomial_inside(x: Array, n: Array, a: Array, b: Array) -> Array:
         exponent = exponent + sign * _stirling_error(z)
     spread = (n / (x * y)) * (a * b / c) * ((n + c) / ((x + a) * (y + b)))
     return np.exp(exponent) * np.sqrt(spread / (2 * np.pi))
-
-

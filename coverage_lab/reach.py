@@ -30,7 +30,7 @@ def limits_at(plan: Plan, method: Method, n: int, events: list[int]) -> Limits:
 
 
 def bounds_at(plan: Plan, n: int, name: str) -> tuple[Mapping[str, Any], ...]:
-    """For one-sided plans the bound at the three most extreme outcomes: 0, 1, 2 events, or n, n-1, n-2 for a lower one."""
+    """For one-sided plans the bound at 0, 1, 2 events, or at n, n-1, n-2 for a lower one."""
     if plan.side == "two-sided":
         return ()
     events = [k if plan.side == "upper" else n - k for k in range(min(3, n + 1))]

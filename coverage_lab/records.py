@@ -6,7 +6,7 @@ samples; an array of length 1 is a constant that broadcasts.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, field
 from decimal import Decimal
 from typing import TYPE_CHECKING, Any, Literal, Protocol
@@ -126,7 +126,7 @@ class Design(Protocol):
     def points(self, low: float, high: float, n: int) -> Array | None:
         """The finite set of reachable truths in [low, high], or None when every p is reachable."""
 
-    def view(self, needs: frozenset[str]) -> "Design":
+    def view(self, needs: frozenset[str]) -> Design:
         """The same design for methods that need no more than these columns: it may know more about fewer columns."""
 
 
@@ -217,7 +217,7 @@ class Interval:
     raw_lower: float
     raw_upper: float
 
-    def __iter__(self) -> Any:
+    def __iter__(self) -> Iterator[float]:
         return iter((self.lower, self.upper))
 
 

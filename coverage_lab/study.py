@@ -104,7 +104,7 @@ def write_report(audit: Audit, folder: str | Path, *, overwrite: bool = False) -
     """Write the report folder and return the path of its page.
 
     Raises:
-        InputFault: the folder holds the report of another plan, or files that are no report, and `overwrite` is not set.
+        InputFault: the folder holds another plan's report, or files that are no report, and `overwrite` is not set.
         OSError: the folder cannot be written; nothing half-written is left.
     """
     return write_folder(audit, Path(folder), overwrite=overwrite)

@@ -1,12 +1,13 @@
 """From measurements to a recommendation: measure all, name few.
 
-Only a method of the plan's preference list can be named, and only when it meets the standard at n and at n-3 … n+3: "the
-shortest of all that pass" would, by the luck of the saw, name methods that no reviewer signs, and change its mind with n.
+Only a method of the plan's preference list can be named, and only when it meets the standard at n and at n-3 … n+3:
+"the shortest of all that pass" would, by the luck of the saw, name methods that no reviewer signs, and change its mind
+with n.
 """
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Literal
 
 import pandas as pd
 
@@ -17,6 +18,10 @@ from coverage_lab.rounding import percent
 WIDER = 1.05  # a method gives way to a later one on the list that is this much narrower on average
 SIMULATION_MARGIN = 3.0  # standard errors a simulated figure must clear to pass or to fail
 LOPSIDED = 1.25  # times the tail: beyond this, misses on one side are said to dominate
+
+
+Row = Mapping[str, Any]  # one row of the judged methods table
+Status = Literal["recommended", "none", "undecided"]
 
 
 @dataclass(frozen=True)
@@ -38,12 +43,10 @@ def meets(plan: Plan, worst_miss: float, mean_miss: float) -> bool:
     return bool(worst_miss <= worst and mean_miss <= mean)
 
 
-def judge(plan: Plan, row: Mapping[str, Any]) -> Judgement:
+def judge(plan: Plan, row: Row) -> Judgement:
     """One row of the methods table against the standard; simulated figures decide only beyond 3 standard errors."""
     if not row["applies"]:
         return Judgement(None, str(row["reason"]))
-    if pd.isna(row["worst_miss"]):
-        return Judgement(None, "not measured")
     worst, mean = thresholds(plan)
     margin = SIMULATION_MARGIN * row["simulated_standard_error"] if row["minimum_is"] == "simulated" else 0.0
     excess = max(row["worst_miss"] - worst, row["mean_miss"] - mean)
@@ -58,9 +61,14 @@ def judge(plan: Plan, row: Mapping[str, Any]) -> Judgement:
     return Judgement(None, f"{figures}: within 3 Monte Carlo standard errors of the limit; more draws are needed")
 
 
+def rows_of(frame: pd.DataFrame) -> list[Row]:
+    """The rows of a frame as plain mappings."""
+    return [{str(name): value for name, value in row.items()} for row in frame.to_dict("records")]
+
+
 def judged(measured: Measurements) -> pd.DataFrame:
     """The methods table with `passes` and `why`."""
-    judgements = [judge(measured.plan, row) for row in measured.methods.to_dict("records")]
+    judgements = [judge(measured.plan, row) for row in rows_of(measured.methods)]
     passes = pd.Series([item.passes for item in judgements], dtype=object)
     return measured.methods.assign(passes=passes, why=[item.why for item in judgements])
 
@@ -70,30 +78,32 @@ def steady_at(measured: Measurements, n: int, method: str) -> tuple[Mapping[str,
     rows = measured.steady[(measured.steady["planned"] == n) & (measured.steady["method"] == method)]
     return tuple(
         {"n": int(row["n"]), "passes": meets(measured.plan, row["worst_miss"], row["mean_miss"])}
-        for row in rows.to_dict("records")
+        for row in rows_of(rows)
     )
 
 
 def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
     """The verdict for one planned n; `methods` is the judged table."""
     plan = measured.plan
-    here = methods[methods["n"] == n].set_index("method", drop=False)
-    listed = [method.name for method in plan.prefer if here.loc[method.name, "applies"]]
+    here = {row["method"]: row for row in rows_of(methods[methods["n"] == n])}
+    listed = [method.name for method in plan.prefer if here[method.name]["applies"]]
     holding = [name for name in listed if _holds_up(measured, here, n, name)]
     named = _first_not_wide(here, holding)
-    status = "recommended" if named else _without_name(here, listed)
-    row = here.loc[named] if named else None
+    status: Status = "recommended" if named else _without_name(here, listed)
+    row = here[named] if named else None
     return Verdict(
         n=n,
-        status=status,  # type: ignore[arg-type]
+        status=status,
         method=named,
-        sentence=_sentence(plan, n, here, listed, named, status),
+        sentence=_why_named(plan, here, listed, holding, named) if named else _why_not(plan, n, here, listed, status),
         prefer=tuple(method.name for method in plan.prefer),
         steady=steady_at(measured, n, named) if named else (),
         alternatives=_alternatives(measured, here, n, named),
         closest=_closest(here, listed, n) if named is None else None,
         too_small=reach.too_small(plan, n, named) if named else None,
-        holds_on=reach.holds_on(plan, n, named) if named and row is not None and row["minimum_is"] == "certified" else None,
+        holds_on=reach.holds_on(plan, n, named)
+        if named and row is not None and row["minimum_is"] == "certified"
+        else None,
         balance=_balance(plan, row) if row is not None else None,
         bounds_at=reach.bounds_at(plan, n, named) if named else (),
     )
@@ -108,34 +118,34 @@ def overall(by_n: Sequence[Verdict]) -> Verdict:
     return max(by_n, key=lambda item: item.n)
 
 
-def _holds_up(measured: Measurements, here: pd.DataFrame, n: int, name: str) -> bool:
+def _holds_up(measured: Measurements, here: Mapping[str, Row], n: int, name: str) -> bool:
     """Meets the standard at n and, where that can be computed exactly, at every neighbour."""
-    return here.loc[name, "passes"] is True and all(item["passes"] for item in steady_at(measured, n, name))
+    return here[name]["passes"] is True and all(item["passes"] for item in steady_at(measured, n, name))
 
 
-def _first_not_wide(here: pd.DataFrame, holding: Sequence[str]) -> str | None:
+def _first_not_wide(here: Mapping[str, Row], holding: Sequence[str]) -> str | None:
     """The first that is at most 5 % wider on average than every later one."""
-    width = here["mean_width"]
+    width = {name: here[name]["mean_width"] for name in holding}
     for k, name in enumerate(holding):
         if all(width[name] <= WIDER * width[later] for later in holding[k + 1 :]):
             return name
     return None
 
 
-def _without_name(here: pd.DataFrame, listed: Sequence[str]) -> str:
+def _without_name(here: Mapping[str, Row], listed: Sequence[str]) -> Status:
     """Why nothing is named: undecided while a listed method could still pass."""
-    return "undecided" if any(here.loc[name, "passes"] is None for name in listed) else "none"
+    return "undecided" if any(here[name]["passes"] is None for name in listed) else "none"
 
 
 def _alternatives(
-    measured: Measurements, here: pd.DataFrame, n: int, named: str | None
+    measured: Measurements, here: Mapping[str, Row], n: int, named: str | None
 ) -> tuple[Mapping[str, Any], ...]:
     """Every other method that meets the standard at n, its relative mean width, and what speaks against it."""
     found = []
-    for row in here.to_dict("records"):
+    for row in here.values():
         if row["passes"] is not True or row["method"] == named:
             continue
-        relative = row["mean_width"] / here.loc[named, "mean_width"] if named else None
+        relative = float(row["mean_width"] / here[named]["mean_width"]) if named else None
         against = _against(measured, n, row["method"], relative)
         found.append({"method": row["method"], "relative_width": relative, "against": against})
     return tuple(found)
@@ -158,17 +168,17 @@ def _against(measured: Measurements, n: int, name: str, relative: float | None) 
     return "; ".join(points)
 
 
-def _closest(here: pd.DataFrame, listed: Sequence[str], n: int) -> Mapping[str, Any] | None:
+def _closest(here: Mapping[str, Row], listed: Sequence[str], n: int) -> Mapping[str, Any] | None:
     """The listed method with the smallest worst miss: closest, not recommended."""
-    measured = here.loc[[name for name in listed if pd.notna(here.loc[name, "worst_miss"])]]
-    if measured.empty:
+    measured = [here[name] for name in listed if here[name]["worst_miss"] == here[name]["worst_miss"]]
+    if not measured:
         return None
-    row = measured.loc[measured["worst_miss"].idxmin()]
+    row = min(measured, key=lambda item: float(item["worst_miss"]))
     figures = {name: float(row[name]) for name in ("worst_miss", "minimum_coverage", "minimum_at", "mean_coverage")}
     return {"method": row["method"], "n": n, **figures}
 
 
-def _balance(plan: Plan, row: Any) -> str | None:
+def _balance(plan: Plan, row: Row) -> str | None:
     """A sentence when misses on one side dominate; two-sided intervals only."""
     if plan.side != "two-sided":
         return None
@@ -181,28 +191,49 @@ def _balance(plan: Plan, row: Any) -> str | None:
     return None
 
 
-def _sentence(
-    plan: Plan, n: int, here: pd.DataFrame, listed: Sequence[str], named: str | None, status: str
-) -> str:
-    """The verdict in words, from the record that decided it."""
-    worst, mean = thresholds(plan)
-    standard = f"at least {percent(1 - worst, 'up')} everywhere in the planned range and {percent(1 - mean, 'up')} on average"
-    stated = ", ".join(here.loc[name, "label"] for name in listed)
-    if named:
-        row = here.loc[named]
-        only = "the only one on the stated list" if len(listed) == 1 else f"the first of the stated list ({stated}) that holds"
-        return (
-            f"At n = {n}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
-            f"{percent(row['minimum_coverage'], 'down')} everywhere in the planned range and "
-            f"{percent(row['mean_coverage'], 'down')} on average; the standard asks {standard}; {only}"
-            f"{'' if len(listed) > 1 else ', and it holds'}."
-        )
+def _why_named(plan: Plan, here: Mapping[str, Row], listed: Sequence[str], holding: Sequence[str], named: str) -> str:
+    """The recommendation in words, from the record that decided it."""
+    row = here[named]
+    return (
+        f"At n = {row['n']}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
+        f"{percent(row['minimum_coverage'], 'down')} everywhere in the planned range and "
+        f"{percent(row['mean_coverage'], 'down')} on average; the standard asks {_standard(plan)}; "
+        f"{_place(here, listed, holding, named)}."
+    )
+
+
+def _place(here: Mapping[str, Row], listed: Sequence[str], holding: Sequence[str], named: str) -> str:
+    """What the named method is among the listed ones."""
+    if len(listed) == 1:
+        return "it is the only one on the stated list, and it holds"
+    first = f"it is the first of the stated list ({_labels(here, listed)}) that holds"
+    if named == holding[0]:
+        return first
+    wider = here[holding[0]]["mean_width"] / here[named]["mean_width"] - 1
+    passed = f"the {here[holding[0]]['label']} holds too, but is {percent(wider)} wider on average"
+    return f"{first} and is at most {percent(WIDER - 1)} wider than every later one ({passed})"
+
+
+def _why_not(plan: Plan, n: int, here: Mapping[str, Row], listed: Sequence[str], status: str) -> str:
+    """Why nothing is named, in words."""
+    stated = f"stated list ({_labels(here, listed)})"
     if status == "undecided":
         return (
-            f"Undecided at n = {n}: the simulated figures of the stated list ({stated}) lie within 3 Monte Carlo standard "
-            f"errors of the standard ({standard}); more replicates are needed."
+            f"Undecided at n = {n}: simulated figures of the {stated} lie within 3 Monte Carlo standard errors of the "
+            f"standard, {_standard(plan)}; more replicates are needed."
         )
-    return f"No method on the stated list ({stated}) meets the standard at n = {n} and its neighbours: {standard}."
+    return f"No method on the {stated} meets the standard at n = {n} and its neighbours: {_standard(plan)}."
+
+
+def _standard(plan: Plan) -> str:
+    """The standard in numbers."""
+    worst, mean = thresholds(plan)
+    return f"at least {percent(1 - worst)} everywhere in the planned range and {percent(1 - mean)} on average"
+
+
+def _labels(here: Mapping[str, Row], listed: Sequence[str]) -> str:
+    """The listed methods as people know them."""
+    return ", ".join(here[name]["label"] for name in listed)
 
 
 def _form(plan: Plan) -> str:

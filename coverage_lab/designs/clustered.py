@@ -139,8 +139,11 @@ class Clustered(Frame):
         step = max(1, _DRAWN_AT_A_TIME // sizes.total())
         lengths = [min(step, size - start) for start in range(0, size, step)]
         shares = [self.gather(*lens.seen(*self.units(p, n, length, rng), rng)) for length in lengths]
-        whole = {name: [np.broadcast_to(share[name], (k,)) for share, k in zip(shares, lengths, strict=True)] for name in _SUMS}
-        return {**{name: compact(np.concatenate(values)) for name, values in whole.items()}, **self.constants}
+        whole = {
+            name: np.concatenate([np.broadcast_to(s[name], k) for s, k in zip(shares, lengths, strict=True)])
+            for name in _SUMS
+        }
+        return {**{name: compact(values) for name, values in whole.items()}, **self.constants}
 
     def _group(self, m: int, count: int, p: float, lens: Lens) -> guide.Group:
         """`count` clusters of m units, with the outcomes of one; without losses its size needs no counting."""

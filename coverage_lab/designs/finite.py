@@ -7,11 +7,11 @@ from typing import ClassVar
 import numpy as np
 
 from coverage_lab.checks import InputFault, expected
-from coverage_lab.designs.frame import LARGEST_LAW, SMALLEST, Frame, Units, compact, likely
+from coverage_lab.designs.frame import LARGEST_LAW, SMALLEST, Frame, Units, compact, probable
 from coverage_lab.designs.lens import Lens
 from coverage_lab.designs.seen import recorded
 from coverage_lab.designs.simple import RAREST_PART, Simple, evaluable
-from coverage_lab.probability import hypergeometric, hypergeometric_window, point
+from coverage_lab.probability import hypergeometric, likely, point
 from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
 
 LARGEST_POPULATION = 10_000_000
@@ -126,14 +126,12 @@ class Finite(Frame):
         if chances.size > 10 * LARGEST_LAW:
             return None
         x, m = np.tile(events, len(sizes)), np.repeat(sizes, len(events)) if len(sizes) > 1 else sizes
-        return likely({"events": x, "trials": m}, (chances * weight[:, None]).ravel())
+        return probable({"events": x, "trials": m}, (chances * weight[:, None]).ravel())
 
     def _true_events(self, p: float, sizes: Counts) -> tuple[Counts, Array]:
         """True events among the units drawn and their probabilities, array (sizes, events)."""
         marked, population = self.marked(p), int(self.population)
-        first = hypergeometric_window(int(sizes[0]), population, marked, marked, SMALLEST)[0]
-        last = hypergeometric_window(int(sizes[-1]), population, marked, marked, SMALLEST)[1]
-        events = np.arange(first, last + 1)
+        events = np.arange(likely(int(sizes[0]), p)[0], likely(int(sizes[-1]), p)[1] + 1)
         return events, hypergeometric(events[None, :], sizes[:, None], marked, population)
 
     @staticmethod
@@ -156,4 +154,4 @@ class Finite(Frame):
         of_others = point(kept_others[None, :], n - true[:, None], lens.other[1])
         x, y = (grid.ravel() for grid in np.meshgrid(kept_events, kept_others, indexing="ij"))
         joint = (of_events * chances.T).T @ of_others
-        return likely({"events": x, "trials": x + y}, joint.ravel())
+        return probable({"events": x, "trials": x + y}, joint.ravel())

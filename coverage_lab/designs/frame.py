@@ -8,8 +8,8 @@ import numpy as np
 from coverage_lab.designs.lens import CLEAR, Lens
 from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
 
-SMALLEST = 1e-18  # samples that are rarer are not listed
-LARGEST_LAW = 100_000  # more distinct samples than this are not listed: simulation is quicker
+SMALLEST = 1e-18  # a sample less likely than this adds nothing that a double can hold
+LARGEST_LAW = 100_000  # distinct samples: a longer list is not made, simulation is quicker
 
 Units = tuple[Counts, Counts]
 
@@ -78,7 +78,7 @@ def compact(values: Counts) -> Counts:
     return values[:1] if (values == values[0]).all() else values
 
 
-def likely(columns: Columns, weight: Array) -> Outcomes | None:
+def probable(columns: Columns, weight: Array) -> Outcomes | None:
     """The samples that are not too rare to be listed; None when there are too many of them."""
     rows = np.flatnonzero(weight > SMALLEST)
     if rows.size > LARGEST_LAW:

@@ -49,7 +49,7 @@ def draw_sums(groups: Sequence[Group], size: int, rng: np.random.Generator) -> C
 
 
 def _layout(largest: Sequence[int], draws: int) -> list[Word]:
-    """The statistics, distributed over as few 64-bit words as their order allows; each has room for a count of draws."""
+    """The statistics over as few 64-bit words as their order allows; each word has room for a count of draws."""
     words: list[Word] = []
     room = 0
     for k, top in enumerate(largest):

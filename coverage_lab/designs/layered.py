@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from coverage_lab.checks import InputFault, expected
-from coverage_lab.designs.frame import LARGEST_LAW, Frame, likely
+from coverage_lab.designs.frame import LARGEST_LAW, Frame, probable
 from coverage_lab.designs.layers import Layer
 from coverage_lab.designs.lens import Lens, stacked
 from coverage_lab.records import Array, Columns, Outcomes, Part
@@ -103,4 +103,4 @@ def _product(first: Outcomes, second: Outcomes) -> Outcomes | None:
         for found, place in ((first, left), (second, right))
         for name, values in found.columns.items()
     }
-    return likely(joined, first.weight[left] * second.weight[right])
+    return probable(joined, first.weight[left] * second.weight[right])

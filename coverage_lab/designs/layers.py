@@ -6,9 +6,9 @@ from typing import ClassVar, Literal, Protocol, get_args
 import numpy as np
 
 from coverage_lab.checks import InputFault, expected, unknown
-from coverage_lab.designs.frame import likely
-from coverage_lab.probability import point, window
-from coverage_lab.records import Array, Columns, Outcomes
+from coverage_lab.designs.frame import probable
+from coverage_lab.probability import likely, point
+from coverage_lab.records import Array, Columns, Counts, Outcomes
 
 Treatment = Literal["excluded", "events", "non-events"]
 
@@ -142,7 +142,7 @@ class Classification:
         """Validation counts."""
         return self.diseased_tested or 0, self.healthy_tested or 0
 
-    def _with_estimates(self, positive: Array, negative: Array) -> Columns:
+    def _with_estimates(self, positive: Counts, negative: Counts) -> Columns:
         """Validation counts and the estimates made of them."""
         diseased, healthy = self._tested
         counts = {"diseased_positive": positive, "healthy_negative": negative}
@@ -162,11 +162,11 @@ class Classification:
             return None
         counts, chances = [], []
         for tested, chance in zip(self._tested, self._true, strict=True):
-            first, last = window(tested, chance, chance)
+            first, last = likely(tested, chance)
             counts.append(np.arange(first, last + 1))
             chances.append(point(counts[-1], tested, chance))
         positive, negative = (grid.ravel() for grid in np.meshgrid(*counts, indexing="ij"))
-        return likely(self._with_estimates(positive, negative), np.outer(*chances).ravel())
+        return probable(self._with_estimates(positive, negative), np.outer(*chances).ravel())
 
     def view(self, needs: frozenset[str]) -> "Classification":
         """Where nothing needs the estimates, the same test with its chances known."""

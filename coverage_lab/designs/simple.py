@@ -5,12 +5,12 @@ from typing import ClassVar
 
 import numpy as np
 
-from coverage_lab.designs.frame import LARGEST_LAW, Frame, Units, compact, likely
+from coverage_lab.designs.frame import LARGEST_LAW, SMALLEST, Frame, Units, compact, probable
 from coverage_lab.designs.lens import Lens
-from coverage_lab.probability import point, window
+from coverage_lab.probability import likely, point
 from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
 
-RAREST_PART = 1e-14  # evaluable numbers that are rarer are no part of a mixture: far below what branch-and-bound resolves
+RAREST_PART = 1e-14  # a rarer number of evaluable units is no part: far below what branch-and-bound resolves
 
 
 @dataclass(frozen=True)
@@ -39,17 +39,15 @@ class Simple(Frame):
 
     def listed(self, p: float, n: int, lens: Lens) -> Outcomes | None:
         """Trinomial in general: evaluable units binomial, and given these the events; binomial without losses."""
-        sizes, weight = evaluable(n, lens.kept_at(p), 1e-18)
+        sizes, weight = evaluable(n, lens.kept_at(p), SMALLEST)
         chance = lens.chance(p)
-        first, last = window(int(sizes[0]), chance, chance)[0], window(int(sizes[-1]), chance, chance)[1]
-        if len(sizes) * (last - first + 1) > 10 * LARGEST_LAW:
+        events = np.arange(likely(int(sizes[0]), chance)[0], likely(int(sizes[-1]), chance)[1] + 1)
+        if len(sizes) * len(events) > 10 * LARGEST_LAW:
             return None
-        events = np.arange(first, last + 1)
         if len(sizes) == 1:
-            return Outcomes({"events": events, "trials": sizes}, point(events, n, chance))
-        m = np.repeat(sizes, len(events))
-        x = np.tile(events, len(sizes))
-        return likely({"events": x, "trials": m}, np.repeat(weight, len(events)) * point(x, m, chance))
+            return probable({"events": events, "trials": sizes}, point(events, n, chance))
+        m, x = np.repeat(sizes, len(events)), np.tile(events, len(sizes))
+        return probable({"events": x, "trials": m}, np.repeat(weight, len(events)) * point(x, m, chance))
 
     def mixed(self, n: int, lens: Lens) -> tuple[Part, ...] | None:
         """One binomial part for every evaluable number when losses do not depend on the outcome."""
@@ -64,6 +62,8 @@ def evaluable(n: int, kept: float, floor: float) -> tuple[Counts, Array]:
     """The numbers of units kept of n with their probabilities, those above `floor`."""
     if kept == 1:
         return np.array([n]), np.ones(1)
-    first, last = window(n, kept, kept, floor)
+    first, last = likely(n, kept, floor)
     sizes = np.arange(first, last + 1)
-    return sizes, point(sizes, n, kept)
+    weight = point(sizes, n, kept)
+    real = weight > floor
+    return sizes[real], weight[real]

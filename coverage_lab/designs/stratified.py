@@ -9,7 +9,7 @@ from scipy import special
 from scipy.optimize import brentq
 
 from coverage_lab.checks import InputFault, expected
-from coverage_lab.designs.frame import LARGEST_LAW, SMALLEST, Frame, Units, compact, likely
+from coverage_lab.designs.frame import LARGEST_LAW, SMALLEST, Frame, Units, compact, probable
 from coverage_lab.designs.lens import Lens
 from coverage_lab.designs.simple import Simple
 from coverage_lab.records import Array, Columns, Counts, Outcomes
@@ -22,7 +22,7 @@ _TOTALS = frozenset({"events", "trials"})
 
 @dataclass(frozen=True)
 class Stratum:
-    """A share `weight` of the population, of which `size` units are drawn; its odds are `odds_ratio` times a reference's."""
+    """A share `weight` of the population, `size` units drawn from it; its odds are `odds_ratio` times a reference's."""
 
     name: str
     weight: float
@@ -77,7 +77,7 @@ class Stratified(Frame):
         """Units drawn from every stratum when n are drawn in all."""
         listed = np.array([stratum.size for stratum in self.strata])
         share = n * listed / listed.sum()
-        sizes = np.floor(share + 1e-9).astype(np.int64)
+        sizes: Counts = np.floor(share + 1e-9).astype(np.int64)
         order = np.argsort(-(share - sizes), kind="stable")
         sizes[order[: n - sizes.sum()]] += 1
         return sizes
@@ -98,7 +98,7 @@ class Stratified(Frame):
     def faults(self, n: int) -> tuple[str, ...]:
         """Strata that get fewer than two of n units."""
         return tuple(
-            expected(f"at least {SMALLEST_STRATUM} units", int(size), f"[design.strata] {stratum.name}: n of {n} in all")
+            expected(f"at least {SMALLEST_STRATUM} units", int(size), f"[design.strata] {stratum.name}: n of {n}")
             for stratum, size in zip(self.strata, self.sizes(n), strict=True)
             if size < SMALLEST_STRATUM
         )
@@ -128,7 +128,7 @@ class Stratified(Frame):
             own = [np.broadcast_to(law.columns[name], law.weight.shape)[right] for name in ("events", "trials")]
             events, trials = (np.column_stack([old[left], new]) for old, new in zip((events, trials), own, strict=True))
             chance = both[left, right]
-        return likely(self.gather(events, trials - events), chance) if len(chance) <= LARGEST_LAW else None
+        return probable(self.gather(events, trials - events), chance) if len(chance) <= LARGEST_LAW else None
 
     def view(self, needs: frozenset[str]) -> Frame:
         """For methods that need totals only, a frame that knows their law."""
@@ -166,4 +166,4 @@ class StratumTotals(Frame):
             if law is None:
                 return None
             total, first = np.convolve(total, law.weight), first + int(law.columns["events"][0])
-        return likely({"events": np.arange(len(total)) + first, "trials": np.array([n])}, total)
+        return probable({"events": np.arange(len(total)) + first, "trials": np.array([n])}, total)

@@ -1,4 +1,4 @@
-"""The order of a measurement: list the cells, draw, measure every n, look at the neighbours of n, compare the routes."""
+"""The order of a measurement: list cells, draw, measure every n, look at the neighbours of n, compare the routes."""
 
 from collections.abc import Mapping
 from pathlib import Path
@@ -66,7 +66,9 @@ def steady(plan: Plan) -> pd.DataFrame:
             methods = [m for m in applying(plan, n) if m in plan.prefer or planned <= ALL_STEADY_UP_TO]
             parts = listed(plan.design, methods, n, (over.low, over.high), plan.side, plan.tail) if methods else []
             found = figures(parts, over, plan.side) if parts else []
-            rows += [{"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=False)]
+            rows += [
+                {"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=False)
+            ]
     return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss", "mean_width"])
 
 
@@ -81,12 +83,16 @@ def _fits(found: Support) -> list[tuple[float, int]]:
 
 
 def _frame(tables: list[Table]) -> pd.DataFrame:
-    """Blocks of rows as one frame."""
-    return pd.concat([pd.DataFrame(table) for table in tables if table], ignore_index=True) if any(tables) else pd.DataFrame()
+    """Blocks of rows as one frame; draws are whole numbers, absent on the enumerated route."""
+    if not any(tables):
+        return pd.DataFrame()
+    frame = pd.concat([pd.DataFrame(table) for table in tables if table], ignore_index=True)
+    whole = {name: "Int64" for name in ("draws", "simulated_replicates") if name in frame}
+    return frame.astype(whole)
 
 
 def _described(plan: Plan, measured: pd.DataFrame) -> pd.DataFrame:
-    """One row per n and method of the plan, in the plan's order: what the method is, whether it applies, its figures."""
+    """One row per n and method, in the plan's order: what the method is, whether it applies, its figures."""
     rows = []
     for n in plan.sizes:
         for method in plan.methods:

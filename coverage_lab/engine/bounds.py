@@ -1,6 +1,6 @@
-"""From a method's raw formula to the limits that are used: the one place where sides are picked and limits truncated."""
+"""From a method's formula to the limits that are used: the one place that picks sides and truncates."""
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 
 import numpy as np
 
@@ -47,7 +47,9 @@ def evaluate(method: Method, columns: Columns, side: Side, tail: float) -> Limit
 def _checked(method: Method, returned: object, columns: Columns, size: int, side: Side) -> tuple[Array, Array]:
     """The two arrays that were returned, or a fault that names the first sample they are wrong for."""
     try:
-        lower, upper = (np.broadcast_to(np.asarray(limit, dtype=float), (size,)) for limit in returned)  # type: ignore[attr-defined]
+        if not isinstance(returned, Iterable):
+            raise TypeError
+        lower, upper = (np.broadcast_to(np.asarray(limit, dtype=float), (size,)) for limit in returned)
     except (TypeError, ValueError):
         raise InputFault(
             f"method {method.name!r}: expected (lower, upper), two arrays of length {size}, one value a sample; "
@@ -65,7 +67,8 @@ def _checked(method: Method, returned: object, columns: Columns, size: int, side
 
 
 def _described(returned: object) -> str:
-    """What came, for an error line: shapes when there are any."""
+    """What came, for an error line: the kind, and shapes when there are any."""
     if isinstance(returned, tuple | list):
-        return "(" + ", ".join(f"shape {np.shape(item)}" for item in returned) + ")"
-    return f"{type(returned).__name__} of shape {np.shape(returned)}"  # type: ignore[arg-type]
+        return "(" + ", ".join(_described(item) for item in returned) + ")"
+    shape = getattr(returned, "shape", None)
+    return type(returned).__name__ if shape is None else f"an array of shape {shape}"

@@ -28,7 +28,7 @@ class Runs:
     @property
     def curvature(self) -> Array:
         """For each segment a bound on |K''|: every run adds at most 2 n (n - 1), since |b'(k; m, p)| <= m."""
-        return np.bincount(self.segment, self.weight * 2.0 * self.trials * (self.trials - 1), self.segments)
+        return self.total(self.weight * 2.0 * self.trials * (self.trials - 1))
 
     def of(self, chosen: Whole) -> "Runs":
         """The runs of the chosen segments, renumbered 0, 1, … in their order."""
@@ -40,14 +40,14 @@ class Runs:
         return Runs(len(chosen), number, self.trials[rows], self.weight[rows], self.first[rows], self.last[rows])
 
     def chances(self, p: Array) -> Array:
-        """weight * P(first <= X <= last) of every run, at its segment's p."""
+        """P(first <= X <= last) of every run at its segment's p, times the run's weight."""
         at = p[self.segment]
         miss = at_most(self.first - 1, self.trials, at) + at_least(self.last + 1, self.trials, at)
         return self.weight * (1.0 - miss)
 
     def total(self, chances: Array) -> Array:
         """The runs' chances summed by segment."""
-        return np.bincount(self.segment, chances, self.segments)
+        return np.bincount(self.segment, chances, self.segments).astype(float)
 
 
 def branch_and_bound(

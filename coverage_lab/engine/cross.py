@@ -1,4 +1,4 @@
-"""The cross-check of the two routes: do the simulated counts look like draws from the enumerated law?"""
+"""The cross-check of the two routes: whether the simulated counts look like draws from the enumerated law."""
 
 from collections.abc import Sequence
 
@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 from scipy.special import betainc, betaincc, chdtrc
 
-from coverage_lab.records import Array, CrossCheck, Outcomes
+from coverage_lab.records import Array, Counts, CrossCheck, Outcomes
 
 SMALLEST_EXPECTED = 5.0  # classes of a chi-square test are pooled until each expects this many draws (Cochran 1954)
 
@@ -43,15 +43,15 @@ def tail_chances(exact: Array, drawn: Array, draws: Array) -> Array:
     return np.minimum(1.0, 2.0 * np.minimum(at_least, at_most))
 
 
-def goodness_of_fit(law: Outcomes, drawn: Outcomes, places: tuple[Array, Array]) -> tuple[float, int]:
+def goodness_of_fit(law: Outcomes, drawn: Outcomes, places: tuple[Counts, Counts]) -> tuple[float, int]:
     """Chi-square statistic and degrees of freedom of one cell's tally against its law; (0, 0) with a single class.
 
     places: where the samples of the law and of the draws stand in one common list.
     """
     draws = float(drawn.draws or 0)
     size = int(max(place.max() for place in places)) + 1
-    wanted = np.bincount(places[0].astype(int), law.weight * draws, size)
-    seen = np.bincount(places[1].astype(int), np.rint(drawn.weight * draws), size)
+    wanted = np.bincount(places[0], law.weight * draws, size)
+    seen = np.bincount(places[1], np.rint(drawn.weight * draws), size)
     order = np.argsort(-wanted, kind="stable")
     wanted, seen = wanted[order], seen[order]
     large = wanted >= SMALLEST_EXPECTED

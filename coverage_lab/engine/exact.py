@@ -1,4 +1,4 @@
-"""Figures over a whole range of p that need no grid: certified minima and closed-form means of a design's binomial parts."""
+"""Figures over a whole range of p that need no grid: certified minima and closed-form means of binomial parts."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
@@ -33,7 +33,9 @@ def possible(part: Part, low: float, high: float, floor: float = 1e-18) -> Count
     return np.arange(first, last + 1)
 
 
-def listed(design: Design, methods: Sequence[Method], n: int, between: tuple[float, float], side: Side, tail: float) -> list[Listed]:
+def listed(
+    design: Design, methods: Sequence[Method], n: int, between: tuple[float, float], side: Side, tail: float
+) -> list[Listed]:
     """The design's parts at n with the methods' limits, evaluated for what the range can produce."""
     found = []
     for part in design.parts(n) or ():

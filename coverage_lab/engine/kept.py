@@ -5,6 +5,7 @@ import sqlite3
 from contextlib import AbstractContextManager
 from pathlib import Path
 from types import TracebackType
+from typing import Any
 
 import numpy as np
 
@@ -54,7 +55,8 @@ class Kept(AbstractContextManager["Kept"]):
             return
         columns, counts = counted
         buffer = io.BytesIO()
-        np.savez(buffer, counts=counts, **{f"column_{name}": values for name, values in columns.items()})
+        arrays: dict[str, Any] = {f"column_{name}": values for name, values in columns.items()}
+        np.savez(buffer, counts=counts, **arrays)
         self._store.execute("INSERT OR REPLACE INTO kept VALUES (?, ?)", (_versioned(block), buffer.getvalue()))
         self._store.commit()
 

@@ -11,7 +11,7 @@ from scipy.special import betainc
 
 from coverage_lab.engine.measures import Stack
 from coverage_lab.probability import betabinomial
-from coverage_lab.records import Array, Side
+from coverage_lab.records import Array, Counts, Side
 
 
 @dataclass(frozen=True)
@@ -35,14 +35,15 @@ class Range:
         return a / (a + b) * inside / self.mass
 
 
-def range_means(events: Array, n: int, limits: Stack, over: Range, side: Side) -> dict[str, Array]:
+def range_means(events: Counts, n: int, limits: Stack, over: Range, side: Side) -> dict[str, Array]:
     """Mean miss rates, width, outside-[0,1] and zero-width rates over the range; (methods,) each.
 
     events: (samples,), every x that the range can produce, with the limits for the same x.
     """
-    a, b = events + over.prior[0], n - events + over.prior[1]
+    x = events.astype(float)
+    a, b = x + over.prior[0], n - x + over.prior[1]
     weight = betabinomial(events, n, *over.prior) / over.mass
-    at_low, at_high = betainc(a, b, over.low), betainc(a, b, over.high)
+    at_low, at_high = (np.asarray(betainc(a, b, end), dtype=float) for end in (over.low, over.high))
     below = (at_high - _between(a, b, limits.upper, over, at_low, at_high)) @ weight
     above = (_between(a, b, limits.lower, over, at_low, at_high) - at_low) @ weight
     chance = weight * (at_high - at_low)

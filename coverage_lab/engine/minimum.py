@@ -1,4 +1,4 @@
-"""The certified infimum of coverage over a range of p: end points where the covering sets are runs, else branch-and-bound.
+"""The certified infimum of coverage over a range of p: by end points where covering sets are runs, else by branching.
 
 Coverage at p of a binomial design is K(p) = sum of P(X = x) over the covering x. Between two neighbouring end points of
 the intervals the covering set is constant. When it is a run i..j, K' = n [b(i-1; n-1, p) - b(j; n-1, p)] changes sign
@@ -23,7 +23,7 @@ Chance = Callable[[Array], Array]
 
 @dataclass(frozen=True)
 class Piece:
-    """One binomial part of a design: with `weight`, X ~ Binomial(trials, chance(p)); limits for x = first, first+1, …"""
+    """One binomial part, X ~ Binomial(trials, chance(p)), with `weight`; limits for x = first and on, none left out."""
 
     trials: int
     weight: float
@@ -131,7 +131,8 @@ def at_point(pieces: Sequence[Piece], p: float, chance: Chance = identity) -> Mi
     for piece in pieces:
         positions = np.arange(len(piece.lower)) + piece.first
         covers = (piece.lower <= p) & (p <= piece.upper)
-        miss += piece.weight * _outside(*(positions[ends] for ends in _ends_of_runs(covers)), piece.trials, at)
+        first, last = _ends_of_runs(covers)
+        miss += piece.weight * _outside(positions[first], positions[last], piece.trials, at)
     return Minimum(coverage=1.0 - miss, at=p, certified=True, miss=miss)
 
 

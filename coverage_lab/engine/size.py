@@ -1,6 +1,6 @@
 """Everything that is measured at one planned n: each method evaluated once on the union of all distinct samples."""
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -12,7 +12,7 @@ from coverage_lab.engine.means import Range
 from coverage_lab.engine.measures import ERRORS, MEASURES, Stack, measure, stack
 from coverage_lab.engine.tally import union
 from coverage_lab.engine.work import Cell
-from coverage_lab.records import Array, Columns, Counts, Method, Outcomes, Part, Plan, Route
+from coverage_lab.records import Columns, Counts, Design, Method, Outcomes, Part, Plan, Route
 
 CURVE_POINTS = 401
 EVERYWHERE_UP_TO = 5000  # beyond this n the minimum over all of (0, 1) costs more than the rest of the audit
@@ -47,11 +47,11 @@ class Support:
         return max(len(values) for values in self.columns.values())
 
 
-def curve_points(low: float, high: float, settle: Any, n: int) -> list[float]:
+def curve_points(low: float, high: float, design: Design, n: int) -> list[float]:
     """Evenly spaced truths over the planned range and a quarter of its width on either side, settled."""
     margin = (high - low) / 4 or min(low, 1 - low) / 2
     ends = max(low - margin, 0.0), min(high + margin, 1.0)
-    return list(dict.fromkeys(settle(float(p), n)[0] for p in np.linspace(*ends, CURVE_POINTS)))
+    return list(dict.fromkeys(design.settle(float(p), n)[0] for p in np.linspace(*ends, CURVE_POINTS)))
 
 
 def support(plan: Plan, n: int, cells: Sequence[Cell], tallies: Mapping[Cell, Outcomes]) -> Support:
@@ -62,7 +62,7 @@ def support(plan: Plan, n: int, cells: Sequence[Cell], tallies: Mapping[Cell, Ou
     parts: Sequence[Part] = ()
     if "enumerated" in plan.simulation.routes:
         lawful = [(c.p, "enumerated", law) for c in cells if (law := plan.design.law(c.p, n)) is not None]
-        points = curve_points(low, high, plan.design.settle, n)
+        points = curve_points(low, high, plan.design, n)
         curve = [(p, "enumerated", law) for p in points if (law := plan.design.law(p, n)) is not None]
         parts = plan.design.parts(n) or ()
     drawn: list[tuple[float, Route, Outcomes]] = [(c.p, "simulated", tallies[c]) for c in cells if c in tallies]
@@ -106,10 +106,11 @@ def _cell_rows(n: int, names: list[str], weighed: Sequence[Weighed], limits: Sta
     for item in weighed:
         values = measure(item.outcomes, limits.at(item.samples), item.p, plan.side)
         k = len(names)
-        keys = {"n": [n] * k, "p": [item.p] * k, "method": names, "route": [item.route] * k}
+        keys: dict[str, Iterable[Any]] = {"n": [n] * k, "p": [item.p] * k, "method": names, "route": [item.route] * k}
         errors = {name: values.get(name, np.full(k, np.nan)) for name in ERRORS}
         draws = [item.outcomes.draws] * k
-        for column, cells in {**keys, **values, **errors, "draws": draws}.items():
+        columns: dict[str, Iterable[Any]] = {**keys, **values, **errors, "draws": draws}
+        for column, cells in columns.items():
             table.setdefault(column, []).extend(cells)
     return table
 

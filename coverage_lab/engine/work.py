@@ -1,4 +1,4 @@
-"""The simulated route's work: cells, blocks of draws, their streams, processes, and blocks kept from an interrupted run.
+"""The simulated route's work: cells, blocks of draws, their streams, processes, and what an interrupted run keeps.
 
 The only file that knows about processes. A block's stream depends on the seed and on what the block is, so neither the
 number of workers, nor the order, nor the rest of the grid changes a digit.
@@ -112,9 +112,7 @@ def _run(
         kept.remove()
 
 
-def _pool(
-    design: Design, todo: list[Block], seed: int, workers: int
-) -> Iterator[tuple[Block, tuple[Columns, Counts]]]:
+def _pool(design: Design, todo: list[Block], seed: int, workers: int) -> Iterator[tuple[Block, tuple[Columns, Counts]]]:
     """Blocks in a process pool, as they finish; with one worker in this process."""
     if workers == 1:
         for block in todo:

@@ -82,9 +82,17 @@ def _log_beta(a: mpf, b: mpf) -> mpf:
 
 
 def beta_below(p: mpf, a: mpf, b: mpf) -> mpf:
-    """Beta(a, b) distribution function: p^a q^b / (a B(a, b)) times the sum of prod (a + b + k) p / (a + 1 + k)."""
-    if p > HALF:
-        return 1 - beta_below(1 - p, b, a)
+    """Beta(a, b) distribution function, from the shorter of the two series."""
+    return _beta_series(p, a, b) if _terms(p, a, b) < _terms(1 - p, b, a) else 1 - _beta_series(1 - p, b, a)
+
+
+def _terms(p: mpf, a: mpf, b: mpf) -> mpf:
+    """About how many terms the series takes: up to its largest one, then at worst a geometric fall."""
+    return max(mpf(0), ((a + b) * p - a) / (1 - p)) - 110 / log(p)
+
+
+def _beta_series(p: mpf, a: mpf, b: mpf) -> mpf:
+    """p^a q^b / (a B(a, b)) times the sum of prod (a + b + k) p / (a + 1 + k): positive terms only."""
     term, total, k = mpf(1), mpf(1), 0
     while term > NEGLIGIBLE * total:
         term *= (a + b + k) * p / (a + 1 + k)

@@ -1,0 +1,21 @@
+"""The report: an audit is saved as a folder of plain files, and figures and page are made from those files alone."""
+
+from pathlib import Path
+
+from coverage_lab.records import Audit
+from coverage_lab.report.document import audit_document
+from coverage_lab.report.folder import Saved, check_target, load, save
+
+__all__ = ["Saved", "audit_document", "check_target", "load", "save", "write"]
+
+
+def write(audit: Audit, folder: Path, *, overwrite: bool = False) -> Path:
+    """Write data, figures and page, all of them or nothing; the path of the page.
+
+    Raises:
+        InputFault: the folder holds another plan's report or other people's files, and `overwrite` is not set.
+        OSError: the folder cannot be written; nothing half-written is left.
+    """
+    from coverage_lab.report import page  # matplotlib and jinja2 are loaded only where a page is made
+
+    return page.write_report(audit, folder, overwrite=overwrite)

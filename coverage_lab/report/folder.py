@@ -1,0 +1,151 @@
+"""The report folder: what is saved, how it is read back, and what may be overwritten."""
+
+import json
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import pandas as pd
+
+from coverage_lab.checks import InputFault, shown
+from coverage_lab.plan_text import plan_digest, plan_text
+from coverage_lab.records import Audit
+from coverage_lab.report.document import FORMAT, audit_document
+from coverage_lab.report.staging import staged
+from coverage_lab.report.words import protocol
+
+DATA_FILES = (
+    *("audit.json", "methods.csv", "cells.csv", "curve.csv", "interval-table.csv", "plan.toml", "protocol.md"),
+)
+PAGE = "report.html"
+
+CELLS = (
+    *("n", "p", "method", "route", "coverage", "standard_error", "missed_below", "missed_above", "mean_width"),
+    *("outside_unit_rate", "zero_width_rate", "no_data_rate", "draws"),
+)
+CURVE = ("n", "p", "method", "coverage", "mean_width")
+TABLE = ("events", "lower", "upper")
+COUNTS = ("draws", "simulated_replicates", "events")
+WORDS = ("method", "label", "family", "source", "formula", "ends", "faults", "reason", "minimum_is", "route", "why")
+ABSENT = ("reason", "minimum_is")  # words that may be missing, as against empty
+SHORTENED = "# only outcomes with a probability over 1e-12 somewhere in the planned range are listed\n"
+
+
+@dataclass(frozen=True)
+class Saved:
+    """A report folder's data as read back: all that figures and page are made from.
+
+    document: audit.json. methods, cells, curve, table: the CSV files of those names (table: interval-table.csv).
+    """
+
+    document: dict[str, Any]
+    methods: pd.DataFrame
+    cells: pd.DataFrame
+    curve: pd.DataFrame
+    table: pd.DataFrame
+
+
+def save(audit: Audit, folder: Path, overwrite: bool = False) -> Path:
+    """Write the data files, all of them or none; figures and page are made by `page.write`.
+
+    Raises:
+        InputFault: see `check_target`.
+        OSError: the folder cannot be written.
+    """
+    check_target(folder, audit.plan.document, overwrite)
+    with staged(folder) as stage:
+        write_data(audit, stage)
+    return folder
+
+
+def write_data(audit: Audit, into: Path) -> None:
+    """The data files, into an existing directory."""
+    document = audit_document(audit)
+    _write(into / "audit.json", json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n")
+    _write(into / "methods.csv", _csv(audit.methods))
+    _write(into / "cells.csv", _csv(audit.cells, CELLS))
+    _write(into / "curve.csv", _csv(audit.curve, CURVE))
+    shortened = 0 < len(audit.table) < audit.verdict.n + 1
+    _write(into / "interval-table.csv", _csv(audit.table, TABLE) + (SHORTENED if shortened else ""))
+    _write(into / "plan.toml", plan_text(audit.plan.document))
+    _write(into / "protocol.md", protocol(document))
+
+
+def load(folder: Path) -> Saved:
+    """Read a report folder back.
+
+    Raises:
+        OSError: a file is missing or unreadable.
+        InputFault: audit.json is not one of ours.
+    """
+    document = _document(folder / "audit.json")
+    if document is None:
+        raise InputFault(f"{folder / 'audit.json'}: expected an audit saved by coverage-lab, format {FORMAT!r}")
+    tables = [_read_csv(folder / f"{name}.csv") for name in ("methods", "cells", "curve", "interval-table")]
+    return Saved(document, *tables)
+
+
+def check_target(folder: Path, plan_document: Mapping[str, Any], overwrite: bool) -> None:
+    """Refuse a folder that holds another plan's report, or other files under the names of ours.
+
+    Raises:
+        InputFault: what the folder holds, and how to go on.
+    """
+    if folder.exists() and not folder.is_dir():
+        raise InputFault(f"{folder}: expected a folder for the report, but it is a file")
+    taken = [name for name in (*DATA_FILES, PAGE) if (folder / name).exists()]
+    if overwrite or not taken:
+        return
+    document = _document(folder / "audit.json") if "audit.json" in taken else None
+    if document is None:
+        raise InputFault(
+            f"{folder}: expected a new folder or an earlier report of this plan, but it holds other files named "
+            f"{', '.join(taken)}; choose another folder with --out, or replace them with --overwrite"
+        )
+    found = document.get("provenance", {}).get("plan_sha256")
+    if found != plan_digest(plan_document):
+        raise InputFault(
+            f"{folder}: expected a new folder or an earlier report of this plan, but it holds the report of another plan "
+            f"({shown(document.get('plan', {}).get('title'))}); choose another folder with --out, or replace it "
+            "with --overwrite"
+        )
+
+
+def _document(path: Path) -> dict[str, Any] | None:
+    """The audit saved at path, or None when the file is something else."""
+    try:
+        document = json.loads(path.read_text(encoding="utf-8"))
+    except ValueError:  # not JSON, or not even text
+        return None
+    return document if isinstance(document, dict) and document.get("format") == FORMAT else None
+
+
+def _write(path: Path, text: str) -> None:
+    path.write_bytes(text.encode("utf-8"))
+
+
+def _csv(frame: pd.DataFrame, first: tuple[str, ...] = ()) -> str:
+    """The frame as CSV: floats in full, counts as whole numbers, missing values empty, `first` columns first."""
+    columns = [*first, *(name for name in frame.columns if name not in first)]
+    counts = {name: frame[name].astype("Int64") for name in COUNTS if name in frame.columns}
+    return frame.reindex(columns=columns).assign(**counts).to_csv(index=False, lineterminator="\n")
+
+
+def _read_csv(path: Path) -> pd.DataFrame:
+    """The frame as it was saved: words stay words, also when they look like a number or like a missing value."""
+    words: dict[str, Any] = dict.fromkeys((*WORDS, "passes", "applies"), str)
+    frame = pd.read_csv(
+        path, dtype=words, keep_default_na=False, na_values=[""], float_precision="round_trip", comment=_comment(path)
+    )
+    for name in frame.columns.intersection(WORDS):
+        kept = frame[name].astype(object)
+        frame[name] = kept.where(kept.notna(), None if name in ABSENT else "")
+    for name in frame.columns.intersection(["passes", "applies"]):
+        frame[name] = pd.Series([{"True": True, "False": False}.get(word) for word in frame[name]], dtype=object)
+    return frame
+
+
+def _comment(path: Path) -> str | None:
+    """Only the interval table may end in a remark; elsewhere a # is part of somebody's words."""
+    return "#" if path.name == "interval-table.csv" else None
