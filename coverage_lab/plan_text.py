@@ -16,7 +16,7 @@ def plan_text(document: Mapping[str, Any]) -> str:
 
 
 def plan_digest(document: Mapping[str, Any]) -> str:
-    """SHA-256, in hexadecimal, of the document as JSON with sorted keys and no spaces: the order of keys is no difference."""
+    """SHA-256, in hexadecimal, of the document as JSON with sorted keys: their order makes no difference."""
     text = json.dumps(document, sort_keys=True, separators=(",", ":"), ensure_ascii=False, allow_nan=False)
     return hashlib.sha256(text.encode("utf-8")).hexdigest()
 

@@ -59,6 +59,7 @@ class Method:
     needs: tuple[str, ...] = ("events", "trials")
     largest_n: int | None = None
     exemptions: Mapping[str, str] = field(default_factory=dict)  # law -> why the law does not hold here
+    slow: bool = False  # each limit takes a search of its own: scanned over many n only when the plan names it
 
 
 @dataclass(frozen=True)
@@ -171,6 +172,39 @@ class Simulation:
 
 
 @dataclass(frozen=True)
+class Precision:
+    """Target: expected half-width at most `half_width` at the worst p; with `assurance` also P(half-width <= it)."""
+
+    half_width: float
+    assurance: float | None = None
+
+
+@dataclass(frozen=True)
+class Rare:
+    """Targets for rare outcomes, one-sided: rule out the rate `limit` with each number of `events` allowed.
+
+    see_at_least, at_rate, with_probability: the n that sees that many events at that rate with that probability.
+    """
+
+    limit: float | None = None
+    events: tuple[int, ...] = (0,)
+    hoped_for: float | None = None
+    see_at_least: int | None = None
+    at_rate: float | None = None
+    with_probability: float = 0.95
+
+
+@dataclass(frozen=True)
+class Decision:
+    """Target: claim that the proportion is on the believed side of a goal, with one-sided error `alpha` and `power`."""
+
+    goal: float
+    believed: float
+    alpha: float
+    power: float
+
+
+@dataclass(frozen=True)
 class Plan:
     """A planned study. `document` is the normalised plan with the file's own keys, as saved and hashed."""
 
@@ -186,6 +220,10 @@ class Plan:
     methods: tuple[Method, ...]
     prefer: tuple[Method, ...]
     document: Mapping[str, Any]
+    precision: Precision | None = None
+    rare: Rare | None = None
+    decision: Decision | None = None
+    horizon: int | None = None  # how far "every larger n" is checked; None: from the targets
 
     @property
     def alpha(self) -> float:

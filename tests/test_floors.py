@@ -7,10 +7,10 @@ import pytest
 
 PACKAGE = Path(__file__).parents[1] / "coverage_lab"
 
-GROUND = {"records", "checks", "probability", "rounding"}
+GROUND = {"records", "records_sizing", "checks", "probability", "probability_finite", "rounding"}
 CATALOGUES = {"intervals", "designs"}
-ADVICE = {"verdict", "reach", "cautions"}
-EDGES = {"plan", "plan_schema", "plan_lines", "plan_text", "report"}
+ADVICE = {"verdict", "reach", "cautions", "sizing"}
+EDGES = {"plan", "plan_text", "report"}
 
 ROOMS: dict[str, set[str]] = {
     # floor 0, ground
@@ -19,6 +19,8 @@ ROOMS: dict[str, set[str]] = {
     "rounding": set(),
     "plan_text": set(),
     "probability": {"records"},
+    "probability_finite": {"records", "probability"},
+    "records_sizing": {"records"},
     # floor 1, catalogues: blind to each other
     "intervals": GROUND,
     "designs": GROUND,
@@ -28,10 +30,9 @@ ROOMS: dict[str, set[str]] = {
     "reach": GROUND | {"engine"},
     "cautions": GROUND,
     "verdict": GROUND | {"engine", "reach"},
+    "sizing": GROUND | CATALOGUES | {"engine", "reach", "verdict"},
     # floor 4, edges: words in, pages out
-    "plan_schema": GROUND,
-    "plan_lines": GROUND,
-    "plan": GROUND | CATALOGUES | {"plan_schema", "plan_lines", "plan_text"},
+    "plan": GROUND | CATALOGUES | {"plan_text"},
     "report": GROUND | {"plan_text"},
     # floor 5, the line
     "study": GROUND | CATALOGUES | ADVICE | EDGES | {"engine"},

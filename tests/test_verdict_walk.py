@@ -4,6 +4,7 @@ from itertools import product
 
 import pytest
 
+from coverage_lab.engine import size
 from coverage_lab.engine.audit import measure
 from coverage_lab.plan import make_plan
 from coverage_lab.records import Plan
@@ -19,6 +20,12 @@ PLANS = [
     *((c, r, n, "two-sided") for c, r, n in product(CONFIDENCES, RANGES, TWO_SIDED)),
     *((c, r, n, "lower" if r == "near one" else "upper") for c, r, n in product(CONFIDENCES, RANGES, ONE_SIDED)),
 ]
+
+
+@pytest.fixture(autouse=True)
+def _no_curve(monkeypatch: pytest.MonkeyPatch) -> None:
+    """The verdict does not read the curve; two points of it save most of the time."""
+    monkeypatch.setattr(size, "CURVE_POINTS", 2)
 
 
 def plan(confidence: float, low: float, high: float, n: int, side: str, only: list[str] | None = None) -> Plan:

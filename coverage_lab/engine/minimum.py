@@ -18,7 +18,11 @@ from coverage_lab.records import Array, Minimum
 
 SAME = 1e-13  # end points closer than this, relatively, are one: exact limits share them up to rounding
 
+_UPPER, _LOWER = 1, 2
+_BOTH = _UPPER | _LOWER
+
 Chance = Callable[[Array], Array]
+Flags = NDArray[np.bool_]
 
 
 @dataclass(frozen=True)
@@ -43,7 +47,7 @@ class Segments:
     right: Array
     miss_left: Array
     miss_right: Array
-    ordered: NDArray[np.bool_]
+    ordered: Flags
 
 
 def identity(p: Array) -> Array:
@@ -51,32 +55,49 @@ def identity(p: Array) -> Array:
     return p
 
 
-def edges(pieces: Sequence[Piece], low: float, high: float) -> tuple[Array, Array]:
-    """Left and right ends of the segments into which the limits cut [low, high]."""
-    cuts = np.concatenate([limit for piece in pieces for limit in (piece.lower, piece.upper)])
-    ends = np.unique(np.concatenate([[low], cuts[(cuts > low) & (cuts < high)], [high]]))
-    left, right = ends[:-1], ends[1:]
-    real = right - left > SAME * right
-    return (left[real], right[real]) if real.any() else (np.array([low]), np.array([high]))
+def edges(pieces: Sequence[Piece], low: float, high: float) -> tuple[Array, Array, Flags, Flags]:
+    """Left and right ends of the segments into which the limits cut [low, high], and which of the ends can be worst.
+
+    Coverage falls at an end point only where an interval begins (seen from the left) or ends (seen from the right), so
+    a left end matters when some upper limit lies there, a right end when some lower limit does, and so do low and high.
+    """
+    uppers = np.concatenate([piece.upper for piece in pieces])
+    lowers = np.concatenate([piece.lower for piece in pieces])
+    cuts = np.concatenate([[low], uppers, lowers, [high]])
+    kind = np.repeat([_BOTH, _UPPER, _LOWER, _BOTH], [1, len(uppers), len(lowers), 1])
+    inside = (cuts >= low) & (cuts <= high)
+    order = np.argsort(cuts[inside], kind="stable")
+    cuts, kind = cuts[inside][order], kind[inside][order]
+    gap = np.flatnonzero(cuts[1:] - cuts[:-1] > SAME * cuts[1:])
+    if len(gap) == 0:
+        return np.array([low]), np.array([high]), np.array([True]), np.array([True])
+    shared = np.bitwise_or.reduceat(kind, np.concatenate([[0], gap + 1]))
+    return cuts[gap], cuts[gap + 1], (shared[:-1] & _UPPER) > 0, (shared[1:] & _LOWER) > 0
 
 
-def segments(pieces: Sequence[Piece], low: float, high: float, chance: Chance = identity) -> Segments:
-    """The segments of [low, high] with the miss rate at both ends of each."""
-    left, right = edges(pieces, low, high)
-    middle = (left + right) / 2
-    miss_left, miss_right = np.zeros(len(left)), np.zeros(len(left))
+def segments(
+    pieces: Sequence[Piece], low: float, high: float, chance: Chance = identity, *, every_end: bool = True
+) -> Segments:
+    """The segments with the miss rate at both ends of each, or only where an end can be worst (elsewhere 0)."""
+    left, right, falls_left, falls_right = edges(pieces, low, high)
+    rows = np.arange(len(left))
+    at_left, at_right = (rows, rows) if every_end else (rows[falls_left], rows[falls_right])
+    at = chance(np.concatenate([left[at_left], right[at_right]]))
+    both = np.concatenate([at_left, at_right])
     ordered = np.full(len(left), len(pieces) == 1)
+    miss = np.zeros(len(both))
     for piece in pieces:
-        begin, end, run = _run(piece, middle)
+        begin, end, run = _run(piece, (left + right) / 2)
         ordered &= run
-        below, above = piece.first + begin - 1, piece.first + end
-        for miss, at in ((miss_left, chance(left)), (miss_right, chance(right))):
-            outside = at_most(below, piece.trials, at) + at_least(above, piece.trials, at)
-            miss += piece.weight * np.where(end > begin, outside, 1.0)
+        begin, end = begin[both], end[both]
+        outside = at_most(piece.first + begin - 1, piece.trials, at) + at_least(piece.first + end, piece.trials, at)
+        miss += piece.weight * np.where(end > begin, outside, 1.0)
+    miss_left, miss_right = np.zeros(len(left)), np.zeros(len(left))
+    miss_left[at_left], miss_right[at_right] = np.split(miss, [len(at_left)])
     return Segments(left, right, miss_left, miss_right, ordered)
 
 
-def _run(piece: Piece, p: Array) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.bool_]]:
+def _run(piece: Piece, p: Array) -> tuple[NDArray[np.int64], NDArray[np.int64], Flags]:
     """For each p the covering positions begin..end-1, and whether they are known to be a run.
 
     The limits' running maximum from the left and minimum from the right bracket every disorder: where both count the
@@ -87,7 +108,7 @@ def _run(piece: Piece, p: Array) -> tuple[NDArray[np.int64], NDArray[np.int64], 
     return begin, end, run_upper & run_lower
 
 
-def _prefix(limits: Array, p: Array, side: str) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+def _prefix(limits: Array, p: Array, side: str) -> tuple[NDArray[np.int64], Flags]:
     """How many leading limits lie left of p, and whether these are all that do. Sound for any order of the limits."""
     from_left = np.maximum.accumulate(limits)
     from_right = np.minimum.accumulate(limits[::-1])[::-1]
@@ -103,7 +124,7 @@ def minimum(pieces: Sequence[Piece], low: float, high: float, chance: Chance = i
     """
     if low == high:
         return at_point(pieces, low, chance)
-    found = segments(pieces, low, high, chance)
+    found = segments(pieces, low, high, chance, every_end=False)
     best = _of_ordered(found)
     if found.ordered.all():
         return best
@@ -144,7 +165,7 @@ def _outside(first: NDArray[np.int64], last: NDArray[np.int64], n: int, p: Array
     return float((at_most(first[0] - 1, n, p) + at_least(last[-1] + 1, n, p)).item() + between.sum())
 
 
-def _ends_of_runs(covers: NDArray[np.bool_]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+def _ends_of_runs(covers: Flags) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
     """First and last positions of the runs of True."""
     padded = np.concatenate([[False], covers, [False]]).astype(np.int8)
     change = np.diff(padded)

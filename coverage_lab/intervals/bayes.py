@@ -69,7 +69,8 @@ def _right_tail(log_low: Array, a: Array, b: Array, tail: Array) -> Array:
 def _density_gap(log_low: Array, a: Array, b: Array, tail: Array) -> Array:
     """Log-density at the lower end minus that at the upper end which leaves the rest of 2·tail above it."""
     high, rest = beta_upper_and_rest(a, b, _right_tail(log_low, a, b, tail))
-    gap = (a - 1) * (log_low - np.log(high)) + (b - 1) * (np.log1p(-np.exp(log_low)) - np.log(rest))
+    log_rest = np.where(high < 0.5, np.log1p(-np.minimum(high, 0.5)), np.log(rest))
+    gap = (a - 1) * (log_low - np.log(high)) + (b - 1) * (np.log1p(-np.exp(log_low)) - log_rest)
     return np.asarray(gap)
 
 

@@ -9,8 +9,10 @@ from scipy import special
 from coverage_lab.intervals.inputs import floats, pair
 from coverage_lab.intervals.quantiles import beta_lower, beta_upper
 from coverage_lab.intervals.solve import root
-from coverage_lab.probability import at_least, at_most, point
+from coverage_lab.probability import at_least, at_most, deviance, point
 from coverage_lab.records import Array, Bounds, Method
+
+_SERIES_STOPS = 1e5
 
 
 def clopper_pearson(events: ArrayLike, trials: ArrayLike, tail: ArrayLike) -> Bounds:
@@ -40,9 +42,23 @@ def mid_p(events: ArrayLike, trials: ArrayLike, tail: ArrayLike) -> Bounds:
 def poisson_exact(events: ArrayLike, trials: ArrayLike, tail: ArrayLike) -> Bounds:
     """Garwood's exact limits for the mean of a Poisson count, divided by n."""
     x, n, tail = floats(events, trials, tail)
-    lower = np.where(x > 0, special.gammaincinv(np.where(x > 0, x, 1.0), tail), 0.0)
+    lower = np.where(x > 0, _poisson_lower(np.where(x > 0, x, 1.0), tail), 0.0)
     upper = np.where(x > 0, special.gammainccinv(x + 1, tail), -np.log(tail))
     return pair(lower / n, upper / n)
+
+
+def _poisson_lower(x: Array, tail: Array) -> Array:
+    """The mean m with P(X >= x) = tail, x >= 1.
+
+    The library's series for it stops too early when x is large and the tail small; one Newton step, with the tail as
+    the point probability times a hypergeometric sum, mends that.
+    """
+    mean = np.array(special.gammaincinv(x, tail))
+    many = x > _SERIES_STOPS
+    m, k = mean[many], x[many]
+    chance = np.exp(-deviance(k, m) - 1 / (12 * k)) / np.sqrt(2 * np.pi * k)  # P(X = k) by Stirling's formula
+    mean[many] = m + (tail[many] / chance - special.hyp1f1(1.0, k + 1, m)) * m / k
+    return mean
 
 
 def _lower(x: Array, n: Array, tail: Array) -> Array:
@@ -59,11 +75,16 @@ def _upper(x: Array, n: Array, tail: Array) -> Array:
 
 def _mid_p_above(log_p: Array, x: Array, n: Array, tail: Array) -> Array:
     p = np.exp(log_p)
-    return np.log((at_least(x + 1, n, p) + point(x, n, p) / 2) / tail)
+    return _log_ratio(at_least(x + 1, n, p) + point(x, n, p) / 2, tail)
 
 
 def _mid_p_below(p: Array, x: Array, n: Array, tail: Array) -> Array:
-    return np.log((at_most(x - 1, n, p) + point(x, n, p) / 2) / tail)
+    return _log_ratio(at_most(x - 1, n, p) + point(x, n, p) / 2, tail)
+
+
+def _log_ratio(chance: Array, tail: Array) -> Array:
+    """Log of chance / tail, kept finite where a limit rounds to 1 and the chance to 0."""
+    return np.log(np.maximum(chance / tail, 1e-300))
 
 
 CLOPPER_PEARSON = Method(

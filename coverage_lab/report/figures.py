@@ -27,7 +27,7 @@ from coverage_lab.report.words import SHORT_WIDTHS, Document, Row, count, level,
 from coverage_lab.rounding import percent
 
 ROW = 0.225  # inches a method
-LEFT, RIGHT, BOTTOM, TOP = 1.95, 0.3, 0.55, 0.92
+LEFT, RIGHT, BOTTOM, TOP = 2.3, 0.3, 0.55, 0.92
 
 
 def measured(document: Document) -> list[Row]:

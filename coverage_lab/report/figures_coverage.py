@@ -130,9 +130,10 @@ def _points(axes: Axes, saved: Saved, n: int, styles: Mapping[str, Look]) -> Non
     for name, rows in cells.groupby("method", sort=False):
         look = styles[str(name)]
         if look.emphasised:
-            bars = 2 * rows["standard_error"].to_numpy(float)
+            shares, errors = rows["coverage"].to_numpy(float), 2 * rows["standard_error"].to_numpy(float)
+            bars = np.minimum(errors, [shares, 1 - shares])  # a share lies between 0 and 1
             axes.errorbar(
-                rows["p"], rows["coverage"], bars, fmt=look.marker, ms=4, mfc=look.colour, mec="white", mew=0.5,
+                rows["p"], shares, bars, fmt=look.marker, ms=4, mfc=look.colour, mec="white", mew=0.5,
                 ecolor=look.colour, elinewidth=1.1, zorder=4,
             )  # fmt: skip
 

@@ -6,7 +6,9 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
 from coverage_lab.checks import InputFault, shown
 from coverage_lab.plan_text import plan_digest, plan_text
@@ -28,6 +30,9 @@ CURVE = ("n", "p", "method", "coverage", "mean_width")
 TABLE = ("events", "lower", "upper")
 COUNTS = ("draws", "simulated_replicates", "events")
 WORDS = ("method", "label", "family", "source", "formula", "ends", "faults", "reason", "minimum_is", "route", "why")
+WHOLE = ("n", "events")
+JUDGED = ("passes", "applies")
+JUDGED_AS = {"True": True, "False": False}  # anything else is None: not decided
 ABSENT = ("reason", "minimum_is")  # words that may be missing, as against empty
 SHORTENED = "# only outcomes with a probability over 1e-12 somewhere in the planned range are listed\n"
 
@@ -134,16 +139,18 @@ def _csv(frame: pd.DataFrame, first: tuple[str, ...] = ()) -> str:
 
 def _read_csv(path: Path) -> pd.DataFrame:
     """The frame as it was saved: words stay words, also when they look like a number or like a missing value."""
-    words: dict[str, Any] = dict.fromkeys((*WORDS, "passes", "applies"), str)
-    frame = pd.read_csv(
-        path, dtype=words, keep_default_na=False, na_values=[""], float_precision="round_trip", comment=_comment(path)
-    )
-    for name in frame.columns.intersection(WORDS):
-        kept = frame[name].astype(object)
-        frame[name] = kept.where(kept.notna(), None if name in ABSENT else "")
-    for name in frame.columns.intersection(["passes", "applies"]):
-        frame[name] = pd.Series([{"True": True, "False": False}.get(word) for word in frame[name]], dtype=object)
-    return frame
+    frame = pd.read_csv(path, dtype=object, keep_default_na=False, comment=_comment(path))
+    return pd.DataFrame({name: _read(str(name), frame[name].to_numpy(dtype=object)) for name in frame.columns})
+
+
+def _read(name: str, texts: NDArray[np.object_]) -> pd.Series:
+    """One column from its texts; numbers keep every digit."""
+    if name in JUDGED:
+        return pd.Series([JUDGED_AS.get(text) for text in texts], dtype=object)
+    if name in WORDS:
+        return pd.Series([None if name in ABSENT and text == "" else text for text in texts], dtype=object)
+    numbers = np.where(texts == "", "nan", texts).astype(float)
+    return pd.Series(numbers.astype(np.int64) if name in WHOLE else numbers)
 
 
 def _comment(path: Path) -> str | None:

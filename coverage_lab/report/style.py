@@ -22,8 +22,9 @@ from coverage_lab.rounding import percent
 WIDTH = 6.0  # inches: with 9 pt letters still legible when a telephone shows it 340 pixels wide
 INK, SOFT, RULE, WASH, GREY = "#17212b", "#55606c", "#c9d0d7", "#eef2f5", "#b9c1c9"
 MOST_EMPHASISED = 5
-LABEL_LENGTH = 30
-TICK_ROOM = 0.11  # of an axis
+OWN_FAMILY = "your own"  # how the catalogue files methods that are not its own
+LABEL_LENGTH = 36
+TICK_ROOM = {"x": 0.11, "y": 0.05}  # of an axis
 
 # Okabe & Ito's colours that reach 3:1 on white, each with a dash pattern and a marker of its own, so that the lines
 # can be told apart in black-and-white print too.
@@ -103,7 +104,7 @@ def pair(document: Document) -> list[str]:
 def emphasised(document: Document) -> list[str]:
     """At most five methods that a report draws in colour, in catalogue order."""
     per_n = [verdict["method"] or (verdict["closest"] or {}).get("method") for verdict in document["by_n"]]
-    own = [row["method"] for row in document["methods"] if row["family"] == "own"]
+    own = [row["method"] for row in document["methods"] if row["family"] == OWN_FAMILY]
     wanted = [chief(document), "wald", runner_up(document), *own, *per_n, *document["verdict"]["prefer"]]
     listed = list(dict.fromkeys(name for name in wanted if name and _measured(document, name)))[:MOST_EMPHASISED]
     return [name for name in catalogue_order(document) if name in listed]
@@ -172,13 +173,20 @@ def percent_axis(axis: Axis, values: Sequence[float] | None = None) -> None:
 
 
 def stretched(coverage: Array, alpha: float) -> Array:
-    """Coverage on a scale that gives room around the nominal level and still reaches 0 and 100 %."""
-    return np.asarray(-np.log(alpha / 4 + 1 - np.asarray(coverage, float)))
+    """Coverage on a scale that gives room around the nominal level and still reaches 0 and 100 %.
+
+    The logarithm of the miss rate, softened by alpha / 4; straight above 100 %, where only an axis margin lies.
+    """
+    miss = 1 - np.asarray(coverage, float)
+    soft = alpha / 4
+    return np.asarray(-np.log(soft + np.maximum(miss, 0.0)) + np.maximum(-miss, 0.0) / soft)
 
 
 def unstretched(height: Array, alpha: float) -> Array:
     """The inverse of `stretched`."""
-    return np.asarray(1 + alpha / 4 - np.exp(-np.asarray(height, float)))
+    soft = alpha / 4
+    above = np.asarray(height, float) + np.log(soft)  # over the height of 100 %
+    return np.asarray(np.where(above > 0, 1 + soft * above, 1 + soft - soft * np.exp(-np.minimum(above, 0.0))))
 
 
 def coverage_ticks(alpha: float, lowest: float) -> list[float]:
@@ -207,10 +215,10 @@ def scale_coverage(axes: Axes, direction: str, values: Array, alpha: float) -> N
     else:
         axes.set_xscale("function", functions=functions)
         axes.set_xlim(*limits)
-    percent_axis(getattr(axes, f"{direction}axis"), _thinned(coverage_ticks(alpha, limits[0]), limits, alpha))
+    percent_axis(getattr(axes, f"{direction}axis"), _thinned(coverage_ticks(alpha, limits[0]), limits, alpha, TICK_ROOM[direction]))
 
 
-def _thinned(ticks: Sequence[float], limits: tuple[float, float], alpha: float) -> list[float]:
+def _thinned(ticks: Sequence[float], limits: tuple[float, float], alpha: float, room: float) -> list[float]:
     """The ticks that leave each other room; the nominal level goes first, then the others from the ends inwards."""
     span = float(np.ptp(stretched(np.array(limits), alpha)))
     kept: list[float] = []
@@ -218,7 +226,7 @@ def _thinned(ticks: Sequence[float], limits: tuple[float, float], alpha: float) 
         distances = (
             np.abs(stretched(np.array(kept), alpha) - stretched(np.array(tick), alpha)) if kept else np.array([span])
         )
-        if distances.min() >= TICK_ROOM * span:
+        if distances.min() >= room * span:
             kept.append(tick)
     return kept
 

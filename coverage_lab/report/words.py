@@ -3,6 +3,7 @@
 import math
 import re
 from collections.abc import Iterable, Mapping
+from decimal import Decimal
 from typing import Any
 
 from coverage_lab.rounding import Towards, percent, rounded
@@ -36,8 +37,11 @@ TARGETS = {
 
 
 def share(value: float | None, towards: Towards = "nearest") -> str:
-    """A share in percent, or a dash: 0.93412 -> '93.4 %'."""
-    return NOTHING if value is None else percent(value, towards)
+    """A share in percent, or a dash: 0.93412 -> '93.4 %'. An exact 95 % less the last digits of a double is 95 %."""
+    if value is None:
+        return NOTHING
+    lacking = Decimal(f"{1 - value:.9g}") if value <= 1 else Decimal(0)
+    return percent(float(1 - lacking) if 0 < value < 1 else value, towards)
 
 
 def place(p: float | None, towards: Towards = "nearest") -> str:
@@ -75,6 +79,8 @@ def limit_places(n: int) -> int:
 
 def limit(value: float, towards: Towards, places: int) -> str:
     """A limit in percent with fixed decimals, to be rounded outward: ('down' for lower limits, 'up' for upper)."""
+    if value in (0.0, 1.0):
+        return percent(value)
     return f"{rounded(value, places + 2, towards) * 100:.{places}f} %"
 
 
@@ -276,7 +282,7 @@ def _delivers(document: Document, row: Row | None) -> str:
     reach = (
         ""
         if low is None or high is None
-        else (f" The standard is met for true proportions from {place(low, 'up')} to {place(high, 'down')}.")
+        else (f" The standard is met for true proportions from {percent(low, 'up')} to {percent(high, 'down')}.")
     )
     simulated = simulation_words(row, document) if row["minimum_is"] != "simulated" else None
     return (

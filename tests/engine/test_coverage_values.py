@@ -1,6 +1,7 @@
 """Coverage at points, mean coverage and infima against the values in tests/check_values/coverage.csv."""
 
 import csv
+import io
 from pathlib import Path
 
 import numpy as np
@@ -12,7 +13,8 @@ from coverage_lab.engine.means import Range
 from coverage_lab.intervals import CATALOGUE
 from coverage_lab.records import tail_of
 
-ROWS = list(csv.DictReader((Path(__file__).parents[1] / "check_values" / "coverage.csv").open(encoding="utf-8")))
+VALUES = Path(__file__).parents[1] / "check_values" / "coverage.csv"
+ROWS = list(csv.DictReader(io.StringIO(VALUES.read_text(encoding="utf-8"))))
 
 
 def computed(row: dict[str, str]) -> float:

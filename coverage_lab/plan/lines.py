@@ -1,22 +1,22 @@
 """Where in a TOML text a key stands: the standard parser gives values without their lines, so the text is walked."""
 
 import tomllib
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from typing import Any
 
-Path = tuple[str | int, ...]
+KeyPath = tuple[str | int, ...]
 
 LONGEST_STATEMENT = 500  # lines; a longer one ends the walk, and what follows it is reported without a line
 
 
-def lines_of(text: str) -> dict[Path, int]:
+def lines_of(text: str) -> dict[KeyPath, int]:
     """The line, counted from 1, on which every table and every key of a valid TOML text begins.
 
     A path names tables and keys from the outside in; an element of an array of tables is a number, counted from 0.
     """
-    found: dict[Path, int] = {}
-    opened: dict[Path, int] = {}
-    table: Path = ()
+    found: dict[KeyPath, int] = {}
+    opened: dict[KeyPath, int] = {}
+    table: KeyPath = ()
     for line, header, parsed in _statements(text):
         if header:
             table = _opened(parsed, opened)
@@ -27,7 +27,7 @@ def lines_of(text: str) -> dict[Path, int]:
     return found
 
 
-def line_of(path: Path, found: dict[Path, int]) -> int | None:
+def line_of(path: KeyPath, found: Mapping[KeyPath, int]) -> int | None:
     """The line of a key or, where it has none of its own, of what it stands in."""
     while path:
         if path in found:
@@ -58,9 +58,9 @@ def _statements(text: str) -> Iterator[tuple[int, bool, dict[str, Any]]]:
             return
 
 
-def _opened(parsed: dict[str, Any], opened: dict[Path, int]) -> Path:
+def _opened(parsed: dict[str, Any], opened: dict[KeyPath, int]) -> KeyPath:
     """The path of the table that a header opens; `opened` counts the elements of every array of tables so far."""
-    path: Path = ()
+    path: KeyPath = ()
     inside: Any = parsed
     while inside:
         ((name, inside),) = inside.items()
@@ -73,7 +73,7 @@ def _opened(parsed: dict[str, Any], opened: dict[Path, int]) -> Path:
     return path
 
 
-def _paths(value: object, path: Path = ()) -> Iterator[Path]:
+def _paths(value: object, path: KeyPath = ()) -> Iterator[KeyPath]:
     """The paths of every key in a parsed statement, those of inline tables included."""
     if isinstance(value, dict):
         for name, item in value.items():

@@ -1,0 +1,26 @@
+"""Words in: a plan file or a mapping becomes a `Plan`, or one line for every fault, all of them at once.
+
+The only place, with the command line, where names become objects.
+"""
+
+from pathlib import Path
+
+from coverage_lab.plan.build import make_level, make_plan, read_plan
+from coverage_lab.plan.faults import of_option
+from coverage_lab.plan.own import available, own_methods
+from coverage_lab.plan.schema import LARGEST_N
+
+__all__ = [
+    "DEMONSTRATION",
+    "LARGEST_N",
+    "STARTER",
+    "available",
+    "make_level",
+    "make_plan",
+    "of_option",
+    "own_methods",
+    "read_plan",
+]
+
+DEMONSTRATION = Path(__file__).parents[1] / "demonstration.toml"
+STARTER = Path(__file__).parents[1] / "starter.toml"

@@ -1,0 +1,231 @@
+"""A document becomes a `Plan`: checked by the schema and against the catalogues, its defaults filled in."""
+
+from collections.abc import Iterator, Mapping
+from decimal import Decimal
+from pathlib import Path
+from typing import Any
+
+from scipy.special import betainc
+
+from coverage_lab import designs
+from coverage_lab.checks import InputFault, expected, unknown
+from coverage_lab.plan.check import Checked, check, check_head
+from coverage_lab.plan.faults import Fault, Source
+from coverage_lab.plan.lines import lines_of
+from coverage_lab.plan.overrides import overridden
+from coverage_lab.plan.own import Extra, known_methods
+from coverage_lab.plan.reading import parsed, plain
+from coverage_lab.plan.schema import (
+    DesignTable,
+    Head,
+    MethodsTable,
+    OutcomeTable,
+    SampleTable,
+    SimulationTable,
+    StandardTable,
+    StudyTable,
+    Table,
+)
+from coverage_lab.records import Method, Outcome, Plan, Side, Simulation, Standard, Study
+
+GRID_POINTS = 11
+STANDARDS = {"bradley": (1.5, 1.1), "guaranteed": (1 + 1e-9, 1 + 1e-9)}
+LEAST_WEIGHT = 1e-6  # the prior's weight of the planned range, relative to the range's width, that means can bear
+
+
+def read_plan(path: str | Path, *, extra: Extra | None = None, overrides: Mapping[str, Any] | None = None) -> Plan:
+    """The plan in a TOML file.
+
+    Args:
+        path: the file; its name without suffix is the title of a plan that has none.
+        extra: methods of your own, as in `make_plan`.
+        overrides: as in `make_plan`.
+
+    Raises:
+        InputFault: one line per fault, with file, line, key, what was expected and what came.
+    """
+    text, document = parsed(path)
+    document, options = overridden(document, overrides or {})
+    source = Source(str(path), lines_of(text), options, by_command=overrides is not None)
+    return _plan(document, source, Path(path).stem, extra)
+
+
+def make_plan(
+    mapping: Mapping[str, Any], extra: Extra | None = None, overrides: Mapping[str, Any] | None = None
+) -> Plan:
+    """The plan in a mapping with the plan file's own keys.
+
+    Args:
+        mapping: such as {"outcome": {"range": [0.005, 0.05]}, "sample": {"n": 250}}.
+        extra: methods of your own, name -> function (events, trials, tail) -> (lower, upper).
+        overrides: values of command-line options by the option's name without dashes (`n`: a list); None is no value.
+
+    Raises:
+        InputFault: one line per fault, with key, what was expected and what came.
+    """
+    if not isinstance(mapping, Mapping):
+        raise InputFault(expected("a mapping with the keys of a plan file", mapping, "plan"))
+    document = {key: plain(value) for key, value in mapping.items()}
+    document, options = overridden(document, overrides or {})
+    return _plan(document, Source(options=options, by_command=overrides is not None), "Untitled plan", extra)
+
+
+def make_level(overrides: Mapping[str, Any]) -> tuple[float, Side]:
+    """Confidence and side for data in hand, from the options of those names.
+
+    Raises:
+        InputFault: one line per fault.
+    """
+    document, options = overridden({}, overrides)
+    checked = check_head(document)
+    if checked.faults:
+        raise InputFault(*(Source(options=options).line(fault) for fault in checked.faults))
+    head = checked.get(Head)
+    return head.confidence, head.side
+
+
+def _plan(document: Mapping[str, Any], source: Source, title: str, extra: Extra | None) -> Plan:
+    """The plan, or every fault of it in the order of the file."""
+    checked = check(document)
+    known, own_faults = known_methods(extra or {})
+    found = [*checked.faults, *_beyond_schema(document, checked, known)]
+    faults = sorted({fault.path: fault for fault in reversed(found)}.values(), key=source.rank)
+    if faults or own_faults:
+        raise InputFault(*(source.line(fault) for fault in faults), *own_faults)
+    return _built(checked, known, title)
+
+
+def _beyond_schema(document: Mapping[str, Any], checked: Checked, known: Mapping[str, Method]) -> Iterator[Fault]:
+    """Faults that need the catalogues, or two tables at once; each looked for when what it needs is sound."""
+    head, design, outcome = checked.find(Head), checked.find(DesignTable), checked.find(OutcomeTable)
+    if design is not None and design.kind not in designs.CATALOGUE:
+        yield Fault(("design", "kind"), unknown("design", design.kind, designs.CATALOGUE), where="[design] kind")
+    for key in ("only", "prefer"):
+        names = _items(document, "methods", key)
+        yield from _method_faults(key, names, None if head is None else head.side, known)
+    if outcome is not None:
+        found = _outcome(outcome)
+        yield from _prior_faults(found)
+        yield from _grid_faults(_items(document, "simulation", "grid"), found)
+
+
+def _items(document: Mapping[str, Any], table: str, key: str) -> list[Any]:
+    """A list of the document as it stands, so that one wrong item hides no other."""
+    inside = document.get(table)
+    items = inside.get(key) if isinstance(inside, Mapping) else None
+    return items if isinstance(items, list) else []
+
+
+def _method_faults(key: str, names: list[Any], side: Side | None, known: Mapping[str, Method]) -> Iterator[Fault]:
+    """Names that are no method's, and methods that cannot give what is asked."""
+    for k, name in enumerate(names):
+        if not isinstance(name, str):
+            continue
+        if name not in known:
+            yield Fault(("methods", key, k), unknown("method", name, known), where=f"[methods] {key}")
+        elif side is not None and side not in known[name].sides:
+            can = " or ".join(known[name].sides)
+            yield Fault(("methods", key, k), f'a method for side = "{side}"; this one is for {can} only', name)
+
+
+def _prior_faults(outcome: Outcome) -> Iterator[Fault]:
+    """A prior that leaves the planned range without weight has no mean over it."""
+    low, high, prior = outcome.low, outcome.high, outcome.prior
+    weight = float(betainc(*prior, high) - betainc(*prior, low))
+    if low < high and not weight >= LEAST_WEIGHT * (high - low):
+        what = f"weights that do not vanish over the planned range, {low} to {high}"
+        yield Fault(("outcome", "prior"), what, list(prior))
+
+
+def _grid_faults(grid: list[Any], outcome: Outcome) -> Iterator[Fault]:
+    """True proportions to simulate that are not planned for."""
+    for k, p in enumerate(grid):
+        if isinstance(p, int | float) and not outcome.low <= p <= outcome.high:
+            what = f"a proportion within the planned range, {outcome.low} to {outcome.high}"
+            yield Fault(("simulation", "grid", k), what, p)
+
+
+def _built(checked: Checked, known: Mapping[str, Method], title: str) -> Plan:
+    """The plan from sound tables."""
+    head, asked = checked.get(Head), checked.get(MethodsTable)
+    outcome = _outcome(checked.get(OutcomeTable))
+    simulation = _simulation(checked.get(SimulationTable), outcome)
+    entry = designs.CATALOGUE[checked.get(DesignTable).kind]
+    only = asked.only or list(known)
+    prefer = [name for name in asked.prefer or entry.prefer(head.side) if name in only] or only
+    filled: dict[str, dict[str, Any]] = {
+        "": {"title": head.title or title},
+        "outcome": {"expected": outcome.expected, "range": [outcome.low, outcome.high]},
+        "simulation": {"grid": list(simulation.grid)},
+        "methods": {"prefer": prefer},
+    }
+    return Plan(
+        title=head.title or title,
+        confidence=head.confidence,
+        side=head.side,
+        study=_study(checked.get(StudyTable)),
+        outcome=outcome,
+        sizes=_sizes(checked.get(SampleTable)),
+        standard=_standard(checked.get(StandardTable)),
+        design=entry.frame(),
+        simulation=simulation,
+        methods=tuple(method for name, method in known.items() if name in only),
+        prefer=tuple(known[name] for name in prefer),
+        document=_document(checked, filled),
+    )
+
+
+def _document(checked: Checked, filled: Mapping[str, Mapping[str, Any]]) -> dict[str, Any]:
+    """The plan with the file's own keys and every default filled in; it reads back to the same plan."""
+    found = {name: _filled(table, filled.get(name, {})) for name, table in checked.tables.items()}
+    return {**found.pop(""), **{name: table for name, table in found.items() if table}}
+
+
+def _filled(table: Table, filled: Mapping[str, Any]) -> dict[str, Any]:
+    """What a table says, in the order of the schema."""
+    said = {**table.model_dump(), **filled}
+    return {key: value for key, value in said.items() if value is not None}
+
+
+def _study(table: StudyTable) -> Study:
+    return Study(table.population, table.unit, table.target, table.range_basis)
+
+
+def _sizes(table: SampleTable) -> tuple[int, ...]:
+    return tuple(table.candidates) if table.candidates is not None else (table.n or 0,)
+
+
+def _standard(table: StandardTable) -> Standard:
+    worst, mean = STANDARDS.get(table.kind, (table.worst_miss or 0.0, table.mean_miss or 0.0))
+    return Standard(table.kind, worst, mean)
+
+
+def _outcome(table: OutcomeTable) -> Outcome:
+    """The outcome with the half of (expected, range) that was left out; sums are decimal, as people do them."""
+    if table.range is not None:
+        low, high = table.range
+        middle = float((_decimal(low) + _decimal(high)) / 2)
+        expected_p = middle if table.expected is None else table.expected
+    else:
+        expected_p = table.expected or 0.0
+        p = _decimal(expected_p)
+        low, high = float(max(p / 2, 2 * p - 1)), float(min(2 * p, (1 + p) / 2))
+    first, second = table.prior
+    return Outcome(table.name, expected_p, low, high, (first, second))
+
+
+def _simulation(table: SimulationTable, outcome: Outcome) -> Simulation:
+    grid = _spread(outcome.low, outcome.high) if table.grid is None else tuple(table.grid)
+    return Simulation(table.replicates, table.seed, grid, tuple(table.routes))
+
+
+def _spread(low: float, high: float) -> tuple[float, ...]:
+    """Evenly spaced proportions, both ends included; 0.0095 and not 0.009500000000000001."""
+    start, step = _decimal(low), (_decimal(high) - _decimal(low)) / (GRID_POINTS - 1)
+    inner = (float(start + k * step) for k in range(1, GRID_POINTS - 1))
+    return tuple(dict.fromkeys([low, *(min(max(p, low), high) for p in inner), high]))
+
+
+def _decimal(p: float) -> Decimal:
+    """The number as it is written."""
+    return Decimal(repr(p))
