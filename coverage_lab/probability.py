@@ -1,4 +1,4 @@
-"""Binomial, hypergeometric and beta-binomial probabilities, accurate at p = 1e-12 and at a million trials.
+"""Binomial and beta-binomial probabilities, accurate at p = 1e-12 and at a million trials.
 
 Differences of log-gamma values lose nine digits at n = 10**6. Points therefore use the saddle-point form of
 C. Loader, "Fast and accurate computation of binomial probabilities" (2000): Stirling's error and a deviance, both small
@@ -20,7 +20,6 @@ from coverage_lab.records import Array, Counts
 
 _SERIES_FROM = 16.0  # from here on six terms of Stirling's series are good to the last bit
 _STIRLING = (1 / 12, -1 / 360, 1 / 1260, -1 / 1680, 1 / 1188, -691 / 360360)
-_NEGLIGIBLE = 1e-18  # of a sum, relative
 _SPLITTER = 134217729.0  # 2**27 + 1, Veltkamp's constant
 
 
@@ -59,31 +58,6 @@ def window(n: int, low: float, high: float, floor: float = 1e-18) -> tuple[int, 
     first = _first_true(lambda x: point(x, n, low) > floor, 0, bottom)
     back = _first_true(lambda y: point(n - y, n, high) > floor, 0, n - min(top, n))
     return first, n - back
-
-
-def hypergeometric(x: ArrayLike, n: ArrayLike, marked: ArrayLike, population: ArrayLike) -> Array:
-    """P(X = x) for the number X of marked units among n drawn without replacement; 0 outside the possible counts.
-
-    C. Loader's product of three binomial points at the common p = n/population, whose own rounding cancels.
-    """
-    x, n, marked, population = _floats(x, n, marked, population)
-    p = n / population
-    return point(x, marked, p) * point(n - x, population - marked, p) / point(n, population, p)
-
-
-def hypergeometric_at_most(x: ArrayLike, n: ArrayLike, marked: ArrayLike, population: ArrayLike) -> Array:
-    """P(X <= x), hypergeometric: the smaller tail summed outward, with full relative accuracy there."""
-    x, n, marked, population = _floats(x, n, marked, population)
-    small = x * population < n * marked
-    k, m = np.where(small, x, n - x - 1), np.where(small, marked, population - marked)
-    tail = _hypergeometric_tail(k, n, m, population)
-    return np.where(small, tail, 1.0 - tail)
-
-
-def hypergeometric_at_least(x: ArrayLike, n: ArrayLike, marked: ArrayLike, population: ArrayLike) -> Array:
-    """P(X >= x), hypergeometric: the unmarked units' P(n - X <= n - x)."""
-    x, n, marked, population = _floats(x, n, marked, population)
-    return hypergeometric_at_most(n - x, n, population - marked, population)
 
 
 def likely(n: int, p: float, floor: float = 1e-18) -> tuple[int, int]:
@@ -135,23 +109,6 @@ def _first_true(test: Callable[[Counts], NDArray[np.bool_]], low: int, high: int
         low = low if place == 0 else int(tried[place - 1]) + 1
         high = high if place == tried.size else int(tried[place])
     return high
-
-
-def _hypergeometric_tail(x: Array, n: Array, marked: Array, population: Array) -> Array:
-    """P(X <= x) added from x down, best where x is below the mean; finished elements drop out of the loop."""
-    cases = np.stack([values.ravel() for values in (np.minimum(x, np.minimum(n, marked)), n, marked, population)])
-    term = hypergeometric(*cases)
-    total = term.copy()
-    active = np.flatnonzero(term > 0)
-    cases, term = cases[:, active], term[active]
-    while active.size:
-        k, s, m, size = cases
-        term = term * (k * (size - m - s + k)) / ((m - k + 1) * (s - k + 1))
-        total[active] += term
-        going = term > _NEGLIGIBLE * total[active]
-        active, term, cases = active[going], term[going], cases[:, going]
-        cases[0] -= 1
-    return total.reshape(x.shape)
 
 
 def _edge_point(x: Array, n: Array, p: Array) -> Array:

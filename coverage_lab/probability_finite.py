@@ -2,12 +2,10 @@
 
 X events among n units drawn without replacement from N units, M of which are events. Points are the ratio of three
 binomial points at the common p = n/N, so that large powers cancel on paper (C. Loader, "Fast and accurate computation
-of binomial probabilities", 2000). Tails are sums of points from the small side, never 1 minus a sum near 1.
+of binomial probabilities", 2000). Tails are sums of points outward from the count, on the side away from the mean.
 """
 
 from __future__ import annotations
-
-import math
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -15,7 +13,7 @@ from numpy.typing import ArrayLike
 from coverage_lab.probability import point
 from coverage_lab.records import Array
 
-_REACH = 9.0  # standard deviations from the mean beyond which less than 1e-17 of a tail is left
+_NEGLIGIBLE = 1e-18  # of a sum, relative
 
 
 def finite_point(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: ArrayLike) -> Array:
@@ -29,40 +27,42 @@ def finite_point(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: Arra
     return np.where(possible, np.where(whole, 1.0, ratio), 0.0)
 
 
+def finite_below(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: ArrayLike) -> Array:
+    """P(X <= x), broadcasting: the smaller tail is summed outward, with full relative accuracy there."""
+    x, n, size, m = np.broadcast_arrays(*(np.asarray(v, dtype=np.float64) for v in (x, n, population, marked)))
+    small = x * size < n * m
+    tail = _outward(np.where(small, x, n - x - 1), n, size, np.where(small, m, size - m))
+    return np.where(small, tail, 1.0 - tail)
+
+
+def finite_above(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: ArrayLike) -> Array:
+    """P(X >= x), broadcasting: that of the unmarked units, P(n - X <= n - x)."""
+    x, n, size, m = np.broadcast_arrays(*(np.asarray(v, dtype=np.float64) for v in (x, n, population, marked)))
+    return finite_below(n - x, n, size, size - m)
+
+
 def finite_at_most(x: int, n: int, population: int, marked: int) -> float:
-    """P(X <= x)."""
-    low, high = max(0, n + marked - population), min(n, marked)
-    if x < low or x >= high:
-        return float(x >= high)
-    if x > n * (marked / population):
-        return 1.0 - _above(x + 1, n, population, marked)
-    return _below(x, n, population, marked)
+    """P(X <= x) of one case."""
+    return float(finite_below(x, n, population, marked))
 
 
 def finite_at_least(x: int, n: int, population: int, marked: int) -> float:
-    """P(X >= x)."""
-    low, high = max(0, n + marked - population), min(n, marked)
-    if x <= low or x > high:
-        return float(x <= low)
-    if x <= n * (marked / population):
-        return 1.0 - _below(x - 1, n, population, marked)
-    return _above(x, n, population, marked)
+    """P(X >= x) of one case."""
+    return float(finite_above(x, n, population, marked))
 
 
-def _terms(n: int, population: int, marked: int) -> int:
-    """How many points next to any count, away from the mean, hold its tail: the law is log-concave."""
-    share = marked / population
-    variance = n * share * (1 - share) * (population - n) / max(population - 1, 1)
-    return math.ceil(_REACH * math.sqrt(variance)) + 40
-
-
-def _below(x: int, n: int, population: int, marked: int) -> float:
-    """P(X <= x) for x left of the mean, smallest terms first."""
-    first = max(0, n + marked - population, x - _terms(n, population, marked))
-    return float(finite_point(np.arange(first, x + 1), n, population, marked).sum())
-
-
-def _above(x: int, n: int, population: int, marked: int) -> float:
-    """P(X >= x) for x right of the mean, smallest terms first."""
-    last = min(n, marked, x + _terms(n, population, marked))
-    return float(finite_point(np.arange(last, x - 1, -1), n, population, marked).sum())
+def _outward(x: Array, n: Array, population: Array, marked: Array) -> Array:
+    """P(X <= x) added from x down, for x below the mean; finished elements drop out of the loop."""
+    cases = np.stack([values.ravel() for values in (np.minimum(x, np.minimum(n, marked)), n, population, marked)])
+    term = finite_point(*cases)
+    total = term.copy()
+    active = np.flatnonzero(term > 0)
+    cases, term = cases[:, active], term[active]
+    while active.size:
+        k, s, size, m = cases
+        term = term * (k * (size - m - s + k)) / ((m - k + 1) * (s - k + 1))
+        total[active] += term
+        going = term > _NEGLIGIBLE * total[active]
+        active, term, cases = active[going], term[going], cases[:, going]
+        cases[0] -= 1
+    return total.reshape(x.shape)

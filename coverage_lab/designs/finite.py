@@ -11,7 +11,8 @@ from coverage_lab.designs.frame import LARGEST_LAW, SMALLEST, Frame, Units, comp
 from coverage_lab.designs.lens import Lens
 from coverage_lab.designs.seen import recorded
 from coverage_lab.designs.simple import RAREST_PART, Simple, evaluable
-from coverage_lab.probability import hypergeometric, likely, point
+from coverage_lab.probability import likely, point
+from coverage_lab.probability_finite import finite_point
 from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
 
 LARGEST_POPULATION = 10_000_000
@@ -132,7 +133,7 @@ class Finite(Frame):
         """True events among the units drawn and their probabilities, array (sizes, events)."""
         marked, population = self.marked(p), int(self.population)
         events = np.arange(likely(int(sizes[0]), p)[0], likely(int(sizes[-1]), p)[1] + 1)
-        return events, hypergeometric(events[None, :], sizes[:, None], marked, population)
+        return events, finite_point(events[None, :], sizes[:, None], population, marked)
 
     @staticmethod
     def _recorded(true: Counts, chances: Array, sizes: Counts, lens: Lens) -> tuple[Counts, Array]:

@@ -19,6 +19,11 @@ def normal_point(tail: Array) -> Array:
     return np.asarray(-special.ndtri(tail))
 
 
+def student_point(freedom: Array, tail: Array) -> Array:
+    """The t with P(T > t) = tail for Student's T with `freedom` > 0."""
+    return np.asarray(-special.stdtrit(freedom, tail))
+
+
 def pair(lower: ArrayLike, upper: ArrayLike) -> Bounds:
     """The two limits as float64 arrays, 0-d ones included."""
     return np.asarray(lower, dtype=np.float64), np.asarray(upper, dtype=np.float64)

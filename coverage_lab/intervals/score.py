@@ -14,7 +14,11 @@ from coverage_lab.records import Array, Bounds, Method
 def wilson(events: ArrayLike, trials: ArrayLike, tail: ArrayLike) -> Bounds:
     """Wilson's score interval: every p that a score test at `tail` does not reject."""
     x, n, tail = floats(events, trials, tail)
-    z = normal_point(tail)
+    return wilson_at(x, n, normal_point(tail))
+
+
+def wilson_at(x: Array, n: Array, z: Array) -> Bounds:
+    """The same at any point z, not only a normal one; x and n need not be whole."""
     return pair(_wilson_lower(x, n, z), _wilson_upper(x, n, z))
 
 
