@@ -1,14 +1,11 @@
 """Arguments and options that several commands share. Values arrive as typed: the plan's schema judges them all at once."""
 
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from collections.abc import Callable
 from typing import Any
 
 import click
 
 from coverage_lab.checks import InputFault
-
-Command = Callable[..., Any]
 
 
 class Number(click.ParamType):
@@ -36,20 +33,18 @@ as_json = click.option("--json", "as_json", is_flag=True, help="Print the answer
 quiet = click.option("--quiet", is_flag=True, help="No progress, no remarks; faults are still said.")
 
 
-@contextmanager
-def collecting(faults: list[str]) -> Iterator[None]:
-    """Faults of the block are added to the list, so that the next block's are found as well."""
-    try:
-        yield
-    except InputFault as fault:
-        faults += fault.faults
-
-
-def refuse(faults: list[str]) -> None:
-    """Raise everything that was found wrong.
+def together(*steps: Callable[[], Any]) -> list[Any]:
+    """The results of all steps.
 
     Raises:
-        InputFault: the list is not empty.
+        InputFault: the faults of every step that has some, at once.
     """
+    results, faults = [], []
+    for step in steps:
+        try:
+            results.append(step())
+        except InputFault as fault:
+            faults += fault.faults
     if faults:
         raise InputFault(*faults)
+    return results

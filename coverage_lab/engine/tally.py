@@ -1,13 +1,24 @@
 """Equal samples counted once: the shape that both routes share."""
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from coverage_lab.records import Columns, Counts, Outcomes
 
 _DENSE = 1 << 22  # largest key range that is counted in a dense array
+_NEAR_ZERO = 1 << 12
+
+
+@dataclass(frozen=True)
+class Radix:
+    """One column's digit in a mixed-radix key: (value - least) * below, and the key range up to this digit."""
+
+    name: str
+    least: int
+    below: int
+    span: int
 
 
 def tally(columns: Columns, counts: Counts | None = None) -> tuple[Columns, Counts]:
@@ -19,40 +30,37 @@ def tally(columns: Columns, counts: Counts | None = None) -> tuple[Columns, Coun
     if not varying:
         size = 1 if counts is None else int(counts.sum())
         return columns, np.array([size], dtype=np.int64)
-    key, spans = _key(list(varying.values()))
-    if spans[-1] <= _DENSE:
-        total = np.bincount(key, weights=counts, minlength=1).astype(np.int64)
+    key, radices = _key(varying)
+    if radices[-1].span <= _DENSE:
+        total = np.bincount(key, weights=counts).astype(np.int64)
         distinct = np.flatnonzero(total)
         total = total[distinct]
     else:
         distinct, inverse = np.unique(key, return_inverse=True)
         total = np.bincount(inverse, weights=counts).astype(np.int64)
-    return {**columns, **_decoded(distinct, varying, spans)}, total
+    return {**columns, **_decoded(distinct, radices)}, total
 
 
-def _key(values: Sequence[NDArray[np.int64]]) -> tuple[Counts, list[int]]:
-    """One mixed-radix integer per sample, and the running product of the radices."""
-    key = np.zeros(len(values[0]), dtype=np.int64)
-    span = 1
-    spans = []
-    for column in values:
-        low, high = int(column.min()), int(column.max())
-        key += (column - low) * span
-        span *= high - low + 1
-        spans.append(span)
-    if span > np.iinfo(np.int64).max:
-        raise OverflowError("samples take too many distinct values to be told apart by one 64-bit key")
-    return key, spans
-
-
-def _decoded(key: Counts, varying: Columns, spans: list[int]) -> dict[str, Counts]:
-    """The columns behind the keys."""
-    columns = {}
+def _key(varying: Columns) -> tuple[Counts, list[Radix]]:
+    """One mixed-radix integer per sample, and the digits it is made of."""
+    key: Counts | None = None
+    radices: list[Radix] = []
     below = 1
-    for (name, values), span in zip(varying.items(), spans, strict=True):
-        columns[name] = key // below % (span // below) + values.min()
-        below = span
-    return columns
+    for name, column in varying.items():
+        least, most = int(column.min()), int(column.max())
+        least = 0 if 0 <= least < _NEAR_ZERO else least  # a small offset is cheaper kept than taken off every draw
+        digit = column if least == 0 else column - least
+        key = digit if key is None else key + digit * below
+        radices.append(Radix(name, least, below, below * (most - least + 1)))
+        below = radices[-1].span
+    if key is None or below > np.iinfo(np.int64).max:
+        raise OverflowError("samples take too many distinct values to be told apart by one 64-bit key")
+    return key, radices
+
+
+def _decoded(key: Counts, radices: list[Radix]) -> dict[str, Counts]:
+    """The columns behind the keys."""
+    return {r.name: key // r.below % (r.span // r.below) + r.least for r in radices}
 
 
 def simulated(columns: Columns, counts: Counts) -> Outcomes:
@@ -86,6 +94,6 @@ def union(samples: Sequence[Columns]) -> tuple[Columns, list[Counts]]:
     varying = {name: values for name, values in columns.items() if len(values) > 1}
     if not varying:
         return columns, [np.zeros(k, dtype=np.int64) for k in sizes]
-    key, spans = _key(list(varying.values()))
+    key, radices = _key(varying)
     distinct, inverse = np.unique(key, return_inverse=True)
-    return {**columns, **_decoded(distinct, varying, spans)}, np.split(inverse, np.cumsum(sizes)[:-1])
+    return {**columns, **_decoded(distinct, radices)}, np.split(inverse, np.cumsum(sizes)[:-1])

@@ -191,10 +191,10 @@ def unstretched(height: Array, alpha: float) -> Array:
 
 def coverage_ticks(alpha: float, lowest: float) -> list[float]:
     """Ticks for a coverage axis that goes down to `lowest`."""
-    near = [1.0, 1 - alpha / 2, *(1 - alpha * k for k in (1, 2, 4))]
-    far = [share for share in (0.5, 0.0) if share < min(near) - alpha]
-    middle = [1 - 10 * alpha] if alpha * 10 < 0.35 else []
-    return sorted(round(tick, 12) for tick in {*near, *middle, *far} if lowest - 1e-9 <= tick <= 1)
+    near = [0.0, alpha / 2, alpha, 2 * alpha, 4 * alpha]
+    decades = [10.0**power for power in range(-12, 0) if 10.0**power > 5 * alpha]
+    misses = [*near, *decades, 0.5, 1.0]
+    return sorted({round(1 - miss, 14) for miss in misses if 0 <= 1 - miss <= 1 and lowest - 1e-12 <= 1 - miss})
 
 
 def coverage_limits(values: Array, alpha: float) -> tuple[float, float]:

@@ -124,7 +124,7 @@ def worst_coverage(n, lower, upper):
 
 
 def shortest_by_bisection(n, alpha):
-    """The stated construction taken literally: each limit moved by bisection on the worst coverage of the whole table."""
+    """The stated construction taken literally: each limit moved by bisection on the whole table's worst coverage."""
     k = np.arange(n + 1)
     lower = np.where(k == 0, 0.0, stats.beta.ppf(alpha / 2, np.maximum(k, 1), n - k + 1))
     upper = 1 - lower[::-1]

@@ -66,7 +66,7 @@ def test_rows_are_what_the_derivation_gives(monkeypatch: pytest.MonkeyPatch) -> 
     faults = []
     for row in ROWS:
         quick = int(row["trials"]) <= 10 and row["confidence"] == "0.95"
-        if quick or (row["status"] != "derived" and int(row["trials"]) <= 200):
+        if quick or (row["status"] != "derived" and int(row["trials"]) <= 60):
             counts = int(row["events"]), int(row["trials"])
             came = derive.row(row["member"], *counts, row["confidence"], row["side"])
             if not all(is_near(float(came[end]), row, end) for end in ("lower", "upper")):
