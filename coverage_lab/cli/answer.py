@@ -6,8 +6,8 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
-from coverage_lab.report.words import WIDTHS, count, how_sure, label_of, least, place, points, row_of, share
-from coverage_lab.rounding import proportion
+from coverage_lab.report.words import SHORT_WIDTHS, count, how_sure, label_of, least, place, points, row_of, share
+from coverage_lab.rounding import Towards, proportion
 
 Document = dict[str, Any]
 
@@ -38,13 +38,13 @@ def _facts(document: Document) -> Iterator[tuple[str, str]]:
         yield from _closest(document)
     else:
         yield "Method", f"{row['label']} ({named}), n = {count(n)}"
-        yield "Worst interval coverage in the planned range", f"{least(row)}, {how_sure(row)}"
+        yield "Worst interval coverage", f"{least(row)} in the planned range, {how_sure(row)}"
         yield "Mean interval coverage", share(row["mean_coverage"], "down")
-        yield WIDTHS[document["side"]].capitalize(), points(row["mean_width"])
+        yield SHORT_WIDTHS[document["side"]].capitalize(), points(row["mean_width"])
     plain = row_of(document, PLAIN, n)
     if plain is not None and named != PLAIN and plain["minimum_coverage"] is not None:
-        width = f"{WIDTHS[document['side']]} {points(plain['mean_width'])}"
-        yield f"{plain['label']} instead", f"worst interval coverage {least(plain)}, {how_sure(plain)}; {width}"
+        width = f"{SHORT_WIDTHS[document['side']]} {points(plain['mean_width'])}"
+        yield plain["label"], f"would have covered {least(plain)} at worst, {how_sure(plain)}; {width}"
     yield from _one_sided(document)
     yield from _sizes(document)
     yield from _checks(document)
@@ -54,16 +54,16 @@ def _closest(document: Document) -> Iterator[tuple[str, str]]:
     """When nothing is named: what came nearest."""
     closest = document["verdict"]["closest"]
     if closest:
-        worst = f"worst interval coverage {share(closest['minimum_coverage'], 'down')} at p = {place(closest['minimum_at'])}"
-        label = label_of(document, closest["method"])
-        yield "Closest, not recommended", f"{label} ({closest['method']}), n = {count(closest['n'])}: {worst}"
+        worst = f"{share(closest['minimum_coverage'], 'down')} at p = {place(closest['minimum_at'])}"
+        name = f"{label_of(document, closest['method'])} ({closest['method']}), n = {count(closest['n'])}"
+        yield "Closest, not recommended", f"{name}: worst interval coverage {worst}"
 
 
 def _one_sided(document: Document) -> Iterator[tuple[str, str]]:
     """For one-sided plans the bound at the most extreme outcomes."""
     bounds = document["verdict"]["bounds_at"]
     if bounds:
-        towards = "up" if document["side"] == "upper" else "down"
+        towards: Towards = "up" if document["side"] == "upper" else "down"
         said = ", ".join(f"{proportion(item['bound'], towards)} at {item['events']}" for item in bounds)
         yield "Bound by events", said
 
@@ -80,7 +80,7 @@ def _checks(document: Document) -> Iterator[tuple[str, str]]:
     check = document["cross_check"]
     if check is not None:
         agreement = f"largest |z| {check['largest_z']:.2f}, p = {check['p_value']:.2g}"
-        yield "Cross-check of the two routes", f"{count(check['cells'])} figures, {agreement}"
+        yield "Cross-check", f"of the two routes: {count(check['cells'])} figures, {agreement}"
     if document["cautions"]:
         more = len(document["cautions"]) - 1
         yield "Caution", document["cautions"][0] + (f" ({more} more on the page)" if more else "")

@@ -1,7 +1,6 @@
 """`coverage-lab audit`: the main job."""
 
 import os
-import sqlite3
 from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -19,29 +18,36 @@ if TYPE_CHECKING:
 
 DEFINING = ("n", "range", "expected")  # options that make a plan without a file
 
+EXAMPLES = """\b
+Examples:
+  coverage-lab audit
+  coverage-lab audit plan.toml
+  coverage-lab audit --n 250 --range 0.005 0.05
+  coverage-lab audit --n 100 --n 150 --n 250 --expected 0.02 --side upper --out upper-report
+  coverage-lab audit plan.toml --replicates 100000 --workers 2 --json > answer.json
+"""
 
-@click.command()
+
+@click.command(epilog=EXAMPLES, short_help="Recommend a method for a planned study, and write the report.")
 @click.argument("plan", type=click.Path(path_type=Path), required=False)
-@click.option("--n", type=options.NUMBER, multiple=True, metavar="N", help="Planned units; may be repeated.")
+@click.option("--n", type=options.number, multiple=True, metavar="N", help="Planned units; may be repeated.")
 @click.option(
     "--range",
-    type=options.NUMBER,
+    type=options.number,
     nargs=2,
     metavar="LOW HIGH",
     help="Planned range of the true proportion; a plan's own grid gives way to 11 points over it.",
 )
-@click.option("--expected", type=options.NUMBER, metavar="P", help="The likeliest true proportion.")
+@click.option("--expected", type=options.number, metavar="P", help="The likeliest true proportion.")
 @options.confidence
 @options.side
-@click.option("--replicates", type=options.NUMBER, metavar="R", help="Simulated studies for each true proportion.")
-@click.option("--seed", type=options.NUMBER, metavar="S", help="Seed of the simulation.")
+@click.option("--replicates", type=options.number, metavar="R", help="Simulated studies for each true proportion.")
+@click.option("--seed", type=options.number, metavar="S", help="Seed of the simulation.")
 @click.option(
-    "--out", type=click.Path(path_type=Path), metavar="DIR", help="Report folder. [default: PLAN's name-report]"
+    "--out", type=click.Path(path_type=Path), metavar="DIR", help="Report folder. [default: named after PLAN]"
 )
 @click.option("--overwrite", is_flag=True, help="Replace what the report folder holds, whatever it is.")
-@click.option(
-    "--workers", type=options.NUMBER, default=1, metavar="N", help="Processes, for large simulations. [default: 1]"
-)
+@click.option("--workers", type=options.number, default=1, metavar="N", help="Processes for large work. [default: 1]")
 @options.as_json
 @options.quiet
 def audit(
@@ -51,20 +57,12 @@ def audit(
     workers: object,
     as_json: bool,
     quiet: bool,
-    **overrides: Any,  # noqa: ANN401 - click hands over what was typed
+    **overrides: object,
 ) -> None:
     """Measure every interval method for PLAN, recommend one, and write the report folder.
 
     Options replace what the plan says. Without PLAN, --n with --range or --expected make a plan of their own; without
     these, too, the built-in demonstration is audited. The same plan and seed give the same figures, whatever --workers.
-
-    \b
-    Examples:
-      coverage-lab audit
-      coverage-lab audit plan.toml
-      coverage-lab audit --n 250 --range 0.005 0.05
-      coverage-lab audit --n 100 --n 150 --n 250 --expected 0.02 --side upper --out upper-report
-      coverage-lab audit plan.toml --replicates 100000 --workers 2 --json > answer.json
     """
     read, name = _plan_of(plan, overrides)
     chosen, processes = options.together(read, lambda: _processes(workers))
@@ -85,7 +83,7 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
 
     if path is not None:
         return lambda: read_plan(path, overrides=overrides), path.stem
-    if any(overrides[name] for name in DEFINING):
+    if any(overrides[name] not in (None, ()) for name in DEFINING):
         return lambda: make_plan({}, overrides=overrides), "audit"
     return lambda: read_plan(DEMONSTRATION, overrides=overrides), DEMONSTRATION.stem
 
@@ -126,6 +124,8 @@ def _existing(folder: Path) -> Path:
 
 def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
     """The audit; finished draws are kept beside the report until it is done, so that an interrupted run can go on."""
+    import sqlite3
+
     from coverage_lab import study
 
     keep = _existing(folder.parent) / f".{folder.name}.kept"

@@ -53,10 +53,8 @@ def from_csv(path: Path) -> tuple[int, int]:
     if faults:
         raise InputFault(*faults)
     pairs = [(number, row, _pair(headings[1], row)) for number, row in rows if any(row)]
-    wanted = "whole numbers, 0 <= events <= trials"
-    faults = [
-        f"{path}:{number}: {expected(wanted, ','.join(row), 'row')}" for number, row, pair in pairs if pair is None
-    ]
+    bad = [(number, ",".join(row)) for number, row, pair in pairs if pair is None]
+    faults = [f"{path}:{number}: {expected('whole numbers, 0 <= events <= trials', row, 'row')}" for number, row in bad]
     if len(faults) > MOST_FAULTS:
         faults[MOST_FAULTS:] = [f"{path}: {len(faults) - MOST_FAULTS} more rows like these"]
     if faults:

@@ -2,7 +2,7 @@
 
 import math
 import re
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, NamedTuple
 
@@ -15,11 +15,9 @@ from coverage_lab.cli.tables import show_json, show_table
 if TYPE_CHECKING:
     from coverage_lab.cli.planned import Planned
     from coverage_lab.records import Limits, Method, Side
-    from coverage_lab.rounding import Towards
 
 KINDS = {"two-sided": "two-sided interval", "upper": "one-sided upper bound", "lower": "one-sided lower bound"}
 LIMITS = ("lower", "upper", "raw_lower", "raw_upper")
-OUTWARD: tuple["Towards", "Towards"] = ("down", "up")
 
 
 class Question(NamedTuple):
@@ -55,9 +53,19 @@ class WithCounts(click.Command):
             raise
 
 
-@click.command(cls=WithCounts)
-@click.argument("events", type=options.NUMBER, required=False)
-@click.argument("trials", type=options.NUMBER, required=False)
+EXAMPLES = """\b
+Examples:
+  coverage-lab interval 7 250
+  coverage-lab interval 7 250 --method wilson --method clopper-pearson --confidence 0.99
+  coverage-lab interval 0 60 --side upper
+  coverage-lab interval 7 250 --from plan-report
+  coverage-lab interval --data counts.csv --json
+"""
+
+
+@click.command(cls=WithCounts, epilog=EXAMPLES, short_help="Give the interval for data in hand.")
+@click.argument("events", type=options.number, required=False)
+@click.argument("trials", type=options.number, required=False)
 @click.option(
     "--data", type=click.Path(path_type=Path), metavar="FILE.csv", help="Columns events and trials, added up."
 )
@@ -73,20 +81,12 @@ class WithCounts(click.Command):
 @options.side
 @options.as_json
 @options.quiet
-def interval(as_json: bool, quiet: bool, **asked: Any) -> None:  # noqa: ANN401 - click hands over what was typed
+def interval(as_json: bool, quiet: bool, **asked: object) -> None:
     """Give the interval for EVENTS events in TRIALS trials, by every method that applies or by those named.
 
     Limits are rounded outward. Report the method that was fixed before the data were seen: --from FOLDER puts it first.
-
-    \b
-    Examples:
-      coverage-lab interval 7 250
-      coverage-lab interval 7 250 --method wilson --method clopper-pearson --confidence 0.99
-      coverage-lab interval 0 60 --side upper
-      coverage-lab interval 7 250 --from plan-report
-      coverage-lab interval --data counts.csv --json
     """
-    question = _question(**asked)
+    question = _question(asked)
     answers, left_out = _answers(question)
     if not quiet:
         for line in [*_remarks(question), *left_out]:
@@ -97,34 +97,26 @@ def interval(as_json: bool, quiet: bool, **asked: Any) -> None:  # noqa: ANN401 
         _show(question, answers)
 
 
-def _question(
-    events: object,
-    trials: object,
-    data: Path | None,
-    folder: Path | None,
-    method: Sequence[str],
-    confidence: object,
-    side: object,
-) -> Question:
+def _question(asked: Mapping[str, Any]) -> Question:
     """Everything that was typed, checked together."""
     from coverage_lab.cli.counts import read_counts
     from coverage_lab.cli.planned import departures, read_planned
     from coverage_lab.plan import make_level
 
-    found, level, (named, known), planned = options.together(
-        lambda: read_counts(events, trials, data),
-        lambda: make_level({"confidence": confidence, "side": side}),
-        lambda: _named(method),
-        lambda: read_planned(folder) if folder is not None else None,
+    (events, trials), (confidence, side), (named, known), planned = options.together(
+        lambda: read_counts(asked["events"], asked["trials"], asked["data"]),
+        lambda: make_level({"confidence": asked["confidence"], "side": asked["side"]}),
+        lambda: _named(asked["method"]),
+        lambda: None if asked["folder"] is None else read_planned(asked["folder"]),
     )
     if planned is None:
-        return Question(*found, *level, named or list(known.values()), None)
-    faults = departures(planned, known, confidence, side)
+        return Question(events, trials, confidence, side, named or list(known.values()), None)
+    faults = departures(planned, known, asked["confidence"], asked["side"])
     if faults:
         raise InputFault(*faults)
     first = known[planned.method]
     rest = [other for other in named or known.values() if other is not first]
-    return Question(*found, planned.confidence, planned.side, [first, *rest], planned)
+    return Question(events, trials, planned.confidence, planned.side, [first, *rest], planned)
 
 
 def _named(names: Sequence[str]) -> "tuple[list[Method], dict[str, Method]]":
@@ -173,8 +165,8 @@ def _remarks(question: Question) -> list[str]:
     if planned is None or planned.n == question.trials:
         return []
     return [
-        f"TRIALS is {question.trials}, but the audit was made for n = {planned.n}: its figures hold for that n, and the "
-        "method stays the one fixed in advance"
+        f"{question.trials} trials, but n = {planned.n} was planned: the figures of the audit are for that n; "
+        "the method stays the one that was fixed in advance"
     ]
 
 
@@ -194,30 +186,30 @@ def _show(question: Question, answers: list[Answer]) -> None:
     """For people: limits rounded outward, formulas that leave [0, 1] marked."""
     from coverage_lab.rounding import percent
 
-    kind = KINDS[question.side]
-    click.echo(f"{question.events} events in {question.trials} trials, {percent(question.confidence)} {kind}")
-    headings = ("method", "", "lower", "upper", "")
-    rows = [_row(question, answer) for answer in answers]
-    show_table(headings, rows)
+    level = f"{percent(question.confidence)} {KINDS[question.side]}"
+    click.echo(f"{question.events} events in {question.trials} trials, {level}")
+    show_table(("method", "", "lower", "upper", ""), [_row(question, answer) for answer in answers])
 
 
 def _row(question: Question, answer: Answer) -> tuple[str, ...]:
     """One method's line."""
-    from coverage_lab.rounding import proportion
-
-    limits = {name: value for name, value in _limits(answer).items() if value is not None}
-    raw = [limits.get(name) for name in ("raw_lower", "raw_upper")]
+    limits = _limits(answer)
     remarks = []
     if question.planned is not None:
         fixed = answer.method.name == question.planned.method
         remarks.append("fixed in advance" if fixed else "for comparison only")
-    if any(value is None or not 0 <= value <= 1 for value in raw):
-        shown = [
-            "infinite" if value is None else proportion(value, towards)
-            for value, towards in zip(raw, OUTWARD, strict=True)
-        ]
-        remarks.append(f"the formula gives {shown[0]} to {shown[1]}")
-    lower, upper = (
-        proportion(limits[name], towards) for name, towards in zip(("lower", "upper"), OUTWARD, strict=True)
+    raw = limits["raw_lower"], limits["raw_upper"]
+    if any(limit is None or not 0 <= limit <= 1 for limit in raw):
+        remarks.append(f"the formula gives {' to '.join(_outward(*raw))}")
+    shown = _outward(limits["lower"], limits["upper"])
+    return answer.method.name, answer.method.label, *shown, "; ".join(remarks)
+
+
+def _outward(lower: float | None, upper: float | None) -> tuple[str, str]:
+    """Limits rounded so that the interval shown holds the interval computed."""
+    from coverage_lab.rounding import proportion
+
+    return (
+        "-infinity" if lower is None else proportion(lower, "down"),
+        "infinity" if upper is None else proportion(upper, "up"),
     )
-    return answer.method.name, answer.method.label, lower, upper, "; ".join(remarks)

@@ -8,7 +8,6 @@ from pathlib import Path
 from coverage_lab.checks import InputFault
 from coverage_lab.plan import of_option
 from coverage_lab.records import SIDES, Method, Side
-from coverage_lab.report.document import FORMAT
 
 
 @dataclass(frozen=True)
@@ -27,6 +26,8 @@ def read_planned(folder: Path) -> Planned:
     Raises:
         InputFault: not the folder of an audit, or the audit named no method.
     """
+    from coverage_lab.report.document import FORMAT  # brings pandas, which no other question about data in hand needs
+
     path = folder / "audit.json"
     try:
         document = json.loads(path.read_text(encoding="utf-8"))
@@ -53,7 +54,5 @@ def departures(planned: Planned, known: Mapping[str, Method], confidence: object
         if asked is not None and asked != fixed:
             faults.append(of_option(option, asked, f"{fixed}, which was fixed in advance, or the option left out"))
     if planned.method not in known:
-        faults.append(
-            f"method {planned.method!r}, fixed in advance, is one of your own: expected it to be installed here"
-        )
+        faults.append(f"method {planned.method!r}, fixed in advance, is one of your own, and is not installed here")
     return faults

@@ -180,8 +180,9 @@ def _half_width(block: _Block, method: Method, chances: Chances, limits: Limits)
 
 def cost(question: Asked, n: Counts) -> Array:
     """How many events each n brings; (n,)."""
-    where = rows(n, min(question.low, question.expected), max(question.high, question.expected), WIDE / 2)
-    return where.size.astype(float)
+    q = question
+    ends = (q.low, q.high) if "worst_miss" in q.columns else (q.middle, q.middle)
+    return rows(n, min(*ends, q.expected), max(*ends, q.expected), WIDE / 2).size.astype(float)
 
 
 def scan(
