@@ -13,7 +13,15 @@ from coverage_lab.cli.plan import plan
 __all__ = ["cli", "main"]
 
 
-@click.group(cls=Door, context_settings={"help_option_names": ["-h", "--help"]})
+FIRST_STEPS = """\b
+See it at work on an invented study:  coverage-lab audit
+Ask about a study of your own:        coverage-lab audit --n 250 --range 0.005 0.05
+Write a plan file to fill in:         coverage-lab plan plan.toml
+Audit it:                             coverage-lab audit plan.toml
+Later, with the data in hand:         coverage-lab interval 7 250 --from plan-report"""
+
+
+@click.group(cls=Door, epilog=FIRST_STEPS, context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(package_name="coverage-lab", message="%(prog)s %(version)s")
 def cli() -> None:
     """Choose an interval method for a proportion, and defend it.
@@ -21,13 +29,6 @@ def cli() -> None:
     You plan to examine n units and to report a proportion with an interval. Which interval really covers the truth as
     often as it says, at your n, in the range where your proportion should lie? This program works that out by exact
     probabilities and by simulation, names a method, and writes the report.
-
-    \b
-    See it at work on an invented study:   coverage-lab audit
-    Ask about a study of your own:         coverage-lab audit --n 250 --range 0.005 0.05
-    Write a plan file to fill in:          coverage-lab plan plan.toml
-    Audit it:                              coverage-lab audit plan.toml
-    Later, with the data in hand:          coverage-lab interval 7 250 --from plan-report
 
     Exit codes: 0 done; 1 done, but no method is recommended; 2 unusable input, a line for each fault; 130 interrupted.
     """

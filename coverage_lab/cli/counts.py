@@ -1,7 +1,7 @@
 """Data in hand: two numbers, or the rows of a CSV file added up."""
 
 import csv
-from collections.abc import Iterable
+from collections.abc import Iterator
 from pathlib import Path
 
 from coverage_lab.checks import InputFault, expected, unknown
@@ -12,23 +12,33 @@ OTHER_DESIGNS = ("cluster", "stratum", "weight")
 MOST_FAULTS = 20  # of one file; the rest is counted
 
 
-def checked(events: object, trials: object) -> tuple[int, int]:
-    """The two numbers as typed.
+def read_counts(events: object, trials: object, data: Path | None) -> tuple[int, int]:
+    """Events and trials, as typed or from a file.
 
     Raises:
-        InputFault: one or both missing, not whole, negative, or more events than trials.
+        InputFault: neither or both, or counts that are not whole numbers with 0 <= events <= trials.
     """
-    if events is None or trials is None:
+    typed = [value for value in (events, trials) if value is not None]
+    if data is not None and typed:
+        raise InputFault("--data: expected EVENTS and TRIALS or --data FILE.csv, not both")
+    if data is not None:
+        return from_csv(data)
+    if len(typed) < 2:
         raise InputFault("expected EVENTS and TRIALS, two whole numbers, or --data FILE.csv")
+    return _sound(events, trials)
+
+
+def _sound(events: object, trials: object) -> tuple[int, int]:
+    """Two counts that belong together."""
     faults = []
-    if not (isinstance(trials, int) and 1 <= trials <= LARGEST_N):
-        faults.append(of_option("TRIALS", trials, f"a whole number from 1 to {LARGEST_N}"))
     if not (isinstance(events, int) and events >= 0):
         faults.append(of_option("EVENTS", events, "a whole number of at least 0"))
-    if not faults and isinstance(events, int) and isinstance(trials, int):
-        if events <= trials:
-            return events, trials
+    if not (isinstance(trials, int) and 1 <= trials <= LARGEST_N):
+        faults.append(of_option("TRIALS", trials, f"a whole number from 1 to {LARGEST_N}"))
+    elif isinstance(events, int) and events > trials:
         faults.append(of_option("EVENTS", events, f"at most the {trials} of TRIALS"))
+    elif not faults and isinstance(events, int):
+        return events, trials
     raise InputFault(*faults)
 
 
@@ -36,44 +46,58 @@ def from_csv(path: Path) -> tuple[int, int]:
     """The sums of the columns events and trials: the rows are one simple random sample.
 
     Raises:
-        InputFault: unreadable, other columns, or counts that are not whole numbers with events <= trials; with lines.
+        InputFault: unreadable, other columns, or rows that are not whole numbers with events <= trials; with lines.
     """
+    headings, *rows = _rows(path) or [(1, [])]
+    faults = list(_heading_faults(path, headings[1]))
+    if faults:
+        raise InputFault(*faults)
+    pairs = [(number, row, _pair(headings[1], row)) for number, row in rows if any(row)]
+    bad = [(number, ",".join(row)) for number, row, pair in pairs if pair is None]
+    faults = [f"{path}:{number}: {expected('whole numbers, 0 <= events <= trials', row, 'row')}" for number, row in bad]
+    if len(faults) > MOST_FAULTS:
+        faults[MOST_FAULTS:] = [f"{path}: {len(faults) - MOST_FAULTS} more rows like these"]
+    if faults:
+        raise InputFault(*faults)
+    events, trials = (sum(pair[k] for _, _, pair in pairs if pair is not None) for k in range(2))
+    if not 1 <= trials <= LARGEST_N:
+        raise InputFault(f"{path}: {expected(f'a whole number from 1 to {LARGEST_N}', trials, 'the sum of trials')}")
+    return events, trials
+
+
+def _rows(path: Path) -> list[tuple[int, list[str]]]:
+    """Every row with its line, cells without the spaces around them."""
     try:
         with path.open(encoding="utf-8-sig", newline="") as file:
-            rows = list(csv.reader(file, strict=True))
+            reader = csv.reader(file, strict=True)
+            return [(reader.line_num, [cell.strip() for cell in row]) for row in reader]
     except UnicodeDecodeError as error:
-        raise InputFault(f"{path}: expected a text file (CSV in UTF-8), but byte {error.start + 1} is not text") from None
+        raise InputFault(f"{path}: expected a CSV file, but byte {error.start + 1} is not text in UTF-8") from None
     except csv.Error as error:
-        raise InputFault(f"{path}: expected a CSV file, but {error}") from None
+        raise InputFault(f"{path}: expected a CSV file, but: {error}") from None
     except (OSError, ValueError) as error:
         reason = getattr(error, "strerror", None) or error
         raise InputFault(f"{path}: expected a CSV file, but it cannot be read: {reason}") from None
-    return _added(path, rows)
 
 
-def _added(path: Path, rows: list[list[str]]) -> tuple[int, int]:
-    """The sums over all rows below the headings; empty lines do not count."""
-    headings = [name.strip() for name in rows[0]] if rows else []
-    _refuse(_heading_faults(path, headings))
-    pairs, faults = [], []
-    for number, row in enumerate(rows[1:], start=2):
-        if not any(cell.strip() for cell in row):
-            continue
-        values = dict(zip(headings, (cell.strip() for cell in row), strict=False))
-        found = tuple(_whole(values.get(name, "")) for name in COLUMNS)
-        if len(row) != len(headings) or None in found or not 0 <= found[0] <= found[1]:  # type: ignore[operator]
-            faults.append(f"{path}:{number}: {expected('events and trials, whole numbers, 0 <= events <= trials', row)}")
-        pairs.append(found)
-    _refuse(faults)
-    return _within(path, pairs)
-
-
-def _heading_faults(path: Path, headings: list[str]) -> Iterable[str]:
+def _heading_faults(path: Path, headings: list[str]) -> Iterator[str]:
     """Columns that are missing, unknown, or of designs that are not analysed here."""
     for name in headings:
         if name in OTHER_DESIGNS:
-            yield f"{path}:1: column {name!r}: expected a simple random sample, without clusters, strata or weights"
+            yield f"{path}:1: column {name!r}: expected a simple random sample, with the columns events and trials only"
         elif name not in COLUMNS:
             yield f"{path}:1: {unknown('column', name, COLUMNS)}"
-    if sorted(name for name in headings if name in COLUMNS) != sorted(COLUMNS):
-        yield f"{path}:1: {expected('the columns events and trials, each once', headings, 'headings')}"
+    if any(headings.count(name) != 1 for name in COLUMNS):
+        yield f"{path}:1: {expected('the columns events and trials, each once', ','.join(headings), 'headings')}"
+
+
+def _pair(headings: list[str], row: list[str]) -> tuple[int, int] | None:
+    """The two counts of a row, or None when they are no counts."""
+    if len(row) != len(headings):
+        return None
+    values = dict(zip(headings, row, strict=True))
+    try:
+        events, trials = (int(values[name]) for name in COLUMNS)
+    except ValueError:
+        return None
+    return (events, trials) if 0 <= events <= trials else None

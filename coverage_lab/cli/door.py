@@ -3,7 +3,6 @@
 import errno
 import shlex
 from collections.abc import Iterable
-from typing import Any
 
 import click
 
@@ -24,7 +23,7 @@ class Door(click.Group):
         ctx.meta[ARGUMENTS] = list(args)
         return super().parse_args(ctx, args)
 
-    def invoke(self, ctx: click.Context) -> Any:  # noqa: ANN401 - click's own signature
+    def invoke(self, ctx: click.Context) -> object:
         """Run the command; faults go to stderr, a line each."""
         try:
             return super().invoke(ctx)
@@ -38,7 +37,7 @@ class Door(click.Group):
         except OSError as error:
             if error.errno == errno.EPIPE:  # whoever was reading has stopped: click knows what to do
                 raise
-            _say([f"{error.filename or 'output'}: cannot be used: {error.strerror or error}"])
+            _say([f"{error.filename or 'output'}: cannot be read or written: {error.strerror or error}"])
             ctx.exit(UNUSABLE)
 
 

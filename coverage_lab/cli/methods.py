@@ -12,17 +12,17 @@ if TYPE_CHECKING:
 
 WORDS = ("name", "label", "family", "source", "formula", "ends", "faults")
 
+EXAMPLES = """\b
+Examples:
+  coverage-lab methods
+  coverage-lab methods --json        (also formulas, behaviour at 0 and n events, known faults)
+"""
 
-@click.command()
+
+@click.command(epilog=EXAMPLES, short_help="List the interval methods, with their sources.")
 @options.as_json
 def methods(as_json: bool) -> None:
-    """List the interval methods, best standing first, with the sides they can give, their limits and their sources.
-
-    \b
-    Examples:
-      coverage-lab methods
-      coverage-lab methods --json        (also formulas, behaviour at 0 and n events, known faults)
-    """
+    """List the interval methods, best standing first, with the sides they can give, their limits and their sources."""
     from coverage_lab.plan import available
 
     listed = list(available().values())

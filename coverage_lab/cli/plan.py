@@ -7,17 +7,17 @@ import click
 
 from coverage_lab.checks import InputFault
 
+EXAMPLES = """\b
+Examples:
+  coverage-lab plan plan.toml
+  coverage-lab audit plan.toml
+"""
 
-@click.command()
+
+@click.command(epilog=EXAMPLES, short_help="Write a commented plan to start from.")
 @click.argument("file", type=click.Path(path_type=Path))
 def plan(file: Path) -> None:
-    """Write a commented plan to FILE, ready to be changed and audited. An existing file is never overwritten.
-
-    \b
-    Examples:
-      coverage-lab plan plan.toml
-      coverage-lab audit plan.toml
-    """
+    """Write a commented plan to FILE, ready to be changed and audited. An existing file is never overwritten."""
     from coverage_lab.plan import STARTER
 
     try:

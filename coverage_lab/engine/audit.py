@@ -17,10 +17,12 @@ from coverage_lab.records import Measurements, Method, Outcomes, Plan
 NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
 ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
 
+WORDS = ("label", "family", "source", "formula", "ends", "faults")
+WHOLE = {"simulated_replicates": "Int64"}
 FIGURES = (
     *("minimum_coverage", "minimum_at", "minimum_is", "worst_miss", "mean_coverage", "mean_miss", *MEASURES),
     *("simulated_coverage_min", "simulated_coverage_min_at", "simulated_coverage_mean"),
-    *("simulated_replicates", "simulated_standard_error", *(f"simulated_{name}" for name in MEASURES)),
+    *("simulated_replicates", "simulated_standard_error"),
     *("everywhere_minimum_coverage", "everywhere_minimum_at"),
 )
 
@@ -44,9 +46,9 @@ def measure(
         fits += _fits(found)
         if progress is not None:
             progress("measuring", (k + 1) / len(plan.sizes))
-    methods, cells_frame, curve = (_frame(table) for table in tables)
+    cells_frame, curve = _frame(tables[1]), _frame(tables[2])
     check = cross_check(cells_frame, fits) if len(plan.simulation.routes) > 1 else None
-    return Measurements(plan, _described(plan, methods), cells_frame, curve, steady(plan), check)
+    return Measurements(plan, _described(plan, tables[0]), cells_frame, curve, steady(plan), check)
 
 
 def applying(plan: Plan, n: int) -> list[Method]:
@@ -87,40 +89,21 @@ def _frame(tables: list[Table]) -> pd.DataFrame:
     if not any(tables):
         return pd.DataFrame()
     frame = pd.concat([pd.DataFrame(table) for table in tables if table], ignore_index=True)
-    whole = {name: "Int64" for name in ("draws", "simulated_replicates") if name in frame}
-    return frame.astype(whole)
+    return frame.astype({"draws": "Int64"}) if "draws" in frame else frame
 
 
-def _described(plan: Plan, measured: pd.DataFrame) -> pd.DataFrame:
+def _described(plan: Plan, tables: list[Table]) -> pd.DataFrame:
     """One row per n and method, in the plan's order: what the method is, whether it applies, its figures."""
+    measured = {
+        (n, name): {column: values[k] for column, values in table.items()}
+        for table in tables
+        for k, (n, name) in enumerate(zip(table["n"], table["method"], strict=True))
+    }
     rows = []
     for n in plan.sizes:
         for method in plan.methods:
-            words = {name: getattr(method, name) for name in ("label", "family", "source", "formula", "ends", "faults")}
+            words = {name: getattr(method, name) for name in WORDS}
             reason = inapplicable(method, plan.design.columns, n, plan.side)
-            rows.append({"n": n, "method": method.name, **words, "applies": reason is None, "reason": reason})
-    described = pd.DataFrame(rows)
-    if measured.empty:
-        return described.reindex(columns=[*described.columns, *FIGURES])
-    table = described.merge(measured, on=["n", "method"], how="left", validate="one_to_one")
-    return _only_simulated(table.reindex(columns=[*described.columns, *FIGURES]))
-
-
-def _only_simulated(table: pd.DataFrame) -> pd.DataFrame:
-    """Where no exact figure exists the simulated ones stand in, and say so."""
-    lacking = table["minimum_coverage"].isna() & table["simulated_coverage_min"].notna()
-    if not lacking.any():
-        return table.drop(columns=[f"simulated_{name}" for name in MEASURES])
-    stands_in = {
-        "minimum_coverage": table["simulated_coverage_min"],
-        "minimum_at": table["simulated_coverage_min_at"],
-        "minimum_is": "simulated",
-        "worst_miss": 1.0 - table["simulated_coverage_min"],
-        "mean_coverage": table["simulated_coverage_mean"],
-        "mean_miss": 1.0 - table["simulated_coverage_mean"],
-        **{name: table[f"simulated_{name}"] for name in MEASURES},
-    }
-    filled = table.assign(minimum_is=table["minimum_is"].astype(object))
-    for name, values in stands_in.items():
-        filled[name] = filled[name].where(~lacking, values)
-    return filled.drop(columns=[f"simulated_{name}" for name in MEASURES])
+            row = {"n": n, "method": method.name, **words, "applies": reason is None, "reason": reason}
+            rows.append(row | measured.get((n, method.name), {}))
+    return pd.DataFrame(rows, columns=["n", "method", *WORDS, "applies", "reason", *FIGURES]).astype(WHOLE)

@@ -94,9 +94,8 @@ def measure_block(plan: Plan, n: int, found: Support, methods: Sequence[Method])
     names = [method.name for method in methods]
     cells = _cell_rows(n, names, found.cells, limits, plan)
     curve = _cell_rows(n, names, found.curve, limits, plan)
-    rows = _method_rows(plan, n, names, found, limits)
-    for column, values in _simulated_summary(cells, names).items():
-        rows[column] = values
+    exact = _method_rows(plan, n, names, found, limits)
+    rows = {**_simulated_summary(cells, names), **exact}
     return rows, cells, {key: curve[key] for key in ("n", "p", "method", "coverage", "mean_width") if key in curve}
 
 
@@ -134,7 +133,10 @@ def _method_rows(plan: Plan, n: int, names: list[str], found: Support, limits: S
 
 
 def _simulated_summary(cells: Table, names: list[str]) -> Table:
-    """For every method the smallest and the mean simulated coverage over the grid, with the largest standard error."""
+    """For every method the smallest and the mean simulated coverage over the grid, with the largest standard error.
+
+    They stand in for the figures over the range as well, unless exact ones replace them.
+    """
     drawn = np.array([route == "simulated" for route in cells.get("route", [])], dtype=bool)
     if not drawn.any():
         return {}
@@ -144,13 +146,24 @@ def _simulated_summary(cells: Table, names: list[str]) -> Table:
     error = np.asarray(cells["standard_error"])[drawn].reshape(-1, k)
     least = np.argmin(coverage, axis=0)
     columns = np.arange(k)
-    summary: Table = {
-        "simulated_coverage_min": list(coverage[least, columns]),
-        "simulated_coverage_min_at": list(p[least, columns]),
-        "simulated_coverage_mean": list(coverage.mean(axis=0)),
-        "simulated_replicates": [cells["draws"][-1]] * k,
-        "simulated_standard_error": list(error.max(axis=0)),
+    means = {name: list(np.asarray(cells[name])[drawn].reshape(-1, k).mean(axis=0)) for name in MEASURES}
+    lowest, average = coverage[least, columns], coverage.mean(axis=0)
+    stands_in: Table = {
+        "minimum_coverage": list(lowest),
+        "minimum_at": list(p[least, columns]),
+        "minimum_is": ["simulated"] * k,
+        "worst_miss": list(1.0 - lowest),
+        "mean_coverage": list(average),
+        "mean_miss": list(1.0 - average),
     }
-    for name in MEASURES:
-        summary[f"simulated_{name}"] = list(np.asarray(cells[name])[drawn].reshape(-1, k).mean(axis=0))
-    return summary
+    return (
+        stands_in
+        | means
+        | {
+            "simulated_coverage_min": list(lowest),
+            "simulated_coverage_min_at": list(p[least, columns]),
+            "simulated_coverage_mean": list(average),
+            "simulated_replicates": [cells["draws"][-1]] * k,
+            "simulated_standard_error": list(error.max(axis=0)),
+        }
+    )

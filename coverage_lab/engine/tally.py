@@ -4,6 +4,7 @@ A column is an array whose axis 0 runs over samples; further axes, such as strat
 """
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -13,6 +14,17 @@ from coverage_lab.records import Columns, Counts, Outcomes
 
 _DENSE = 1 << 22  # largest key range that is counted in a dense array
 _LARGEST_KEY = (1 << 63) - 1
+_NEAR_ZERO = 1 << 12
+
+
+@dataclass(frozen=True)
+class Radix:
+    """One column's digit in a mixed-radix key: (value - least) * below, and the key range up to this digit."""
+
+    name: str
+    least: int
+    below: int
+    span: int
 
 
 def tally(columns: Columns, counts: Counts | None = None) -> tuple[Columns, Counts]:
@@ -24,9 +36,36 @@ def tally(columns: Columns, counts: Counts | None = None) -> tuple[Columns, Coun
     if not varying:
         size = 1 if counts is None else int(counts.sum())
         return columns, np.array([size], dtype=np.int64)
-    group, first = _grouped(varying)
-    total = np.bincount(group, weights=counts, minlength=len(first)).astype(np.int64)
-    return {**columns, **{name: values[first] for name, values in varying.items()}}, total
+    quick = _quick_key(varying)
+    if quick is None:
+        group, first = _grouped(varying)
+        total = np.bincount(group, weights=counts, minlength=len(first)).astype(np.int64)
+        return {**columns, **{name: values[first] for name, values in varying.items()}}, total
+    key, radices = quick
+    total = np.bincount(key, weights=counts).astype(np.int64)
+    distinct = np.flatnonzero(total)
+    return {**columns, **{r.name: distinct // r.below % (r.span // r.below) + r.least for r in radices}}, total[
+        distinct
+    ]
+
+
+def _quick_key(varying: Columns) -> tuple[Counts, list[Radix]] | None:
+    """One mixed-radix integer per sample, and the digits it is made of, while all keys fit a dense array of counts."""
+    if any(column.ndim > 1 or column.dtype.kind != "i" for column in varying.values()):
+        return None
+    key: Counts | None = None
+    radices: list[Radix] = []
+    below = 1
+    for name, column in varying.items():
+        least, most = int(column.min()), int(column.max())
+        least = 0 if 0 <= least < _NEAR_ZERO else least  # a small offset is cheaper kept than taken off every draw
+        radices.append(Radix(name, least, below, below * (most - least + 1)))
+        if radices[-1].span > _DENSE:
+            return None
+        digit = column if least == 0 else column - least
+        key = digit if key is None else key + digit * below
+        below = radices[-1].span
+    return None if key is None else (key, radices)
 
 
 def _grouped(varying: Columns) -> tuple[Counts, Counts]:

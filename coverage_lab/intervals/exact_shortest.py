@@ -13,7 +13,7 @@ from coverage_lab.intervals.inputs import floats, pair
 from coverage_lab.intervals.solve import root
 from coverage_lab.records import Array, Bounds, Method
 
-LARGEST_N = 1000  # the table is built one count after another: about half a second here, growing with n
+LARGEST_N = 1000  # the table is built one count after another, in time that grows faster than n
 
 
 def shortest_exact(events: ArrayLike, trials: ArrayLike, tail: ArrayLike) -> Bounds:
@@ -46,7 +46,7 @@ def _moved(k: int, n: int, alpha: float, lower: Array, rest: Array) -> tuple[flo
     away. From one half on the mirror image n - k is gone too, as if U(n-k) were one half.
     """
     p, q = float(lower[k]), float(rest[k])
-    slack = alpha + min(1e-12, 1e-10 * alpha)  # ties of coverage with 1 - alpha are the rule here, not the exception
+    slack = alpha + min(1e-12, 1e-10 * alpha)  # a coverage that equals 1 - alpha but for rounding still holds
     i = n - int(np.searchsorted(lower, q, side="left")) + 1
     while i < k and _missed(p, k, i, n) <= slack:
         end, end_rest = float(rest[n - i]), float(lower[n - i])

@@ -16,6 +16,6 @@ def write(audit: Audit, folder: Path, *, overwrite: bool = False) -> Path:
         InputFault: the folder holds another plan's report or other people's files, and `overwrite` is not set.
         OSError: the folder cannot be written; nothing half-written is left.
     """
-    from coverage_lab.report import page  # matplotlib and jinja2 are loaded only where a page is made
+    from coverage_lab.report.page import write_report  # matplotlib and jinja2 are loaded only where a page is made
 
-    return page.write_report(audit, folder, overwrite=overwrite)
+    return write_report(audit, folder, overwrite=overwrite)

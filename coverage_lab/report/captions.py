@@ -27,8 +27,8 @@ def coverage(saved: Saved) -> Words:
     simulated = " Points are simulated, with two Monte Carlo standard errors on either side." if _drawn(saved) else ""
     curves = "Curves are enumerated." if not saved.curve.empty else "Lines only join the simulated points."
     caption = (
-        f"Interval coverage against the true proportion. {curves}{simulated} Open marks show where each emphasised method is "
-        f"worst within the planned range (shaded); other methods are grey. {SCALE}"
+        f"Interval coverage against the true proportion. {curves}{simulated} Open marks show where each emphasised "
+        f"method is worst within the planned range (shaded); other methods are grey. {SCALE}"
     )
     return caption, f"At n = {count(n)}, against a nominal {share(1 - document['alpha'])}: {_pair(document, n)}."
 
@@ -39,8 +39,8 @@ def coverage_by_n(saved: Saved) -> Words:
     ends = (sizes(document)[0], sizes(document)[-1])
     findings = " ".join(f"At n = {count(n)}: {_pair(document, n)}." for n in ends)
     caption = (
-        "Interval coverage over true proportion and n: the darker, the further below nominal. Dashed lines: planned range. "
-        "Between planned sizes nothing is computed; each band belongs to the n beside it."
+        "Interval coverage over true proportion and n: the darker, the further below nominal. Dashed lines: planned "
+        "range. Between planned sizes nothing is computed; each band belongs to the n beside it."
     )
     return caption, findings
 
@@ -50,7 +50,10 @@ def extremes(saved: Saved) -> Words:
     document = saved.document
     n = document["verdict"]["n"]
     passing = [row["label"] for row in document["methods"] if row["n"] == n and row["passes"] is True]
-    caption = f"Worst and mean interval coverage over the planned range, by method. {SCALE} Dotted: what the standard asks everywhere."
+    caption = (
+        "Worst and mean interval coverage over the planned range, by method. Dotted: what the standard asks "
+        f"everywhere. {SCALE}"
+    )
     met = f"The standard is met by {joined(passing)}" if passing else "No method meets the standard"
     return caption, f"{met}. {_pair(document, n)}."
 
@@ -85,8 +88,8 @@ def misses(saved: Saved) -> Words:
         if row is not None and row["missed_below"] is not None:
             told.append(f"{row['label']}: too low {share(row['missed_below'])}, too high {share(row['missed_above'])}")
     caption = (
-        "How often the interval misses on each side, on average over the planned range: too low (it ends below the true "
-        "proportion) to the left, too high to the right."
+        "How often the interval misses on each side, on average over the planned range: too low (it ends below the "
+        "true proportion) to the left, too high to the right."
     )
     return caption, f"Mean misses. {'; '.join(told)}."
 
@@ -96,10 +99,11 @@ def cross_check(saved: Saved) -> Words:
     check = saved.document["cross_check"]
     largest = "not finite" if check["largest_z"] is None else f"{check['largest_z']:.2f}"
     caption = (
-        "Difference between simulated and enumerated coverage in standard errors, one mark per n, true proportion and method. "
-        "Methods share their draws, so marks of one proportion move together."
+        "Difference between simulated and enumerated coverage in standard errors, one mark per n, true proportion and "
+        "method. Methods share their draws, so marks of one proportion move together."
     )
-    return caption, f"Over {count(check['cells'])} cells the largest |z| is {largest} (Bonferroni p = {check['p_value']:.2g})."
+    finding = f"Over {count(check['cells'])} cells the largest |z| is {largest}"
+    return caption, f"{finding} (Bonferroni p = {check['p_value']:.2g})."
 
 
 def _drawn(saved: Saved) -> bool:

@@ -1,13 +1,18 @@
 """An audit as the plain document that is saved as audit.json."""
 
+from __future__ import annotations
+
 import dataclasses
 import math
 from collections.abc import Mapping
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from coverage_lab.records import Audit
+
+if TYPE_CHECKING:
+    from _typeshed import DataclassInstance
 
 FORMAT = "coverage-lab/audit/1"
 
@@ -19,7 +24,7 @@ SIMULATED = {
     "standard_error": "simulated_standard_error",
 }
 EVERYWHERE = {"minimum_coverage": "everywhere_minimum_coverage", "minimum_at": "everywhere_minimum_at"}
-COUNTS = ("replicates",)
+LAST = ("passes", "why")
 
 
 def audit_document(audit: Audit) -> dict[str, Any]:
@@ -43,23 +48,24 @@ def audit_document(audit: Audit) -> dict[str, Any]:
 
 def method_entry(row: Mapping[Any, Any]) -> dict[str, Any]:
     """One row of the method table, with the simulated and the everywhere figures as objects of their own."""
-    nested = {*SIMULATED.values(), *EVERYWHERE.values()}
-    entry = {str(name): plain(value) for name, value in row.items() if name not in nested}
-    judged = {name: entry.pop(name) for name in ("passes", "why") if name in entry}
-    entry["simulated"] = {name: plain(row.get(column)) for name, column in SIMULATED.items()}
-    entry["everywhere"] = {name: plain(row.get(column)) for name, column in EVERYWHERE.items()}
-    for name in COUNTS:
-        count = entry["simulated"][name]
-        entry["simulated"][name] = None if count is None else int(count)
-    return {**entry, **judged}
+    apart = {*SIMULATED.values(), *EVERYWHERE.values(), *LAST}
+    simulated = {name: plain(row.get(column)) for name, column in SIMULATED.items()}
+    replicates = simulated["replicates"]  # a float where other methods have none
+    simulated["replicates"] = int(replicates) if isinstance(replicates, int | float) else None
+    return {
+        **{str(name): plain(value) for name, value in row.items() if name not in apart},
+        "simulated": simulated,
+        "everywhere": {name: plain(row.get(column)) for name, column in EVERYWHERE.items()},
+        **{name: plain(row.get(name)) for name in LAST},
+    }
 
 
-def _fields(record: Any) -> dict[str, Any]:
+def _fields(record: DataclassInstance) -> dict[str, Any]:
     """The fields of a record, one level deep: what they hold may be a mapping that cannot be copied."""
     return {field.name: getattr(record, field.name) for field in dataclasses.fields(record)}
 
 
-def plain(value: Any) -> Any:
+def plain(value: object) -> object:
     """The value in types that JSON knows: NumPy scalars unwrapped, tuples as lists, NaN and infinities as None."""
     if isinstance(value, np.generic):
         value = value.item()

@@ -1,4 +1,4 @@
-"""Figures that compare the methods at the verdict's n, and the two routes: one function a figure, Saved in, Figure out."""
+"""Figures that compare the methods at the verdict's n, and the two routes: one function a figure."""
 
 from collections.abc import Mapping, Sequence
 
@@ -150,8 +150,8 @@ def _by_method(
     for text, row in zip(axes.get_yticklabels(), rows, strict=True):
         look = styles[row["method"]]
         text.set_color(look.colour if look.emphasised else INK)
-        text.set_weight("bold" if row["method"] == chief(document) else "normal")
-        text.set_size(8)
+        text.set_fontweight("bold" if row["method"] == chief(document) else "normal")
+        text.set_fontsize(8)
     return figure, axes, styles
 
 
@@ -163,7 +163,7 @@ def _dot(axes: Axes, x: float, k: int, row: Row, look: Look) -> None:
 
 
 def cross_check(saved: Saved) -> Figure:
-    """The standardised difference of the two routes in every cell, with the limits that chance would pass once in 20."""
+    """The standardised difference of the two routes in every cell, with limits that chance passes once in 20."""
     document = saved.document
     both = paired(saved.cells)
     cells = len(both)
@@ -192,7 +192,7 @@ def cross_check(saved: Saved) -> Figure:
 
 
 def paired(cells: pd.DataFrame) -> pd.DataFrame:
-    """n, p, method, enumerated and simulated coverage, standard error under the enumerated one, and z, one row a cell."""
+    """One row a cell that both routes know: n, p, method, both coverages, draws and z."""
     keys = ["n", "p", "method"]
     sides = [cells.loc[cells["route"] == route, [*keys, "coverage", "draws"]] for route in ("enumerated", "simulated")]
     both = sides[0].drop(columns="draws").merge(sides[1], on=keys, suffixes=("_enumerated", "_simulated"))

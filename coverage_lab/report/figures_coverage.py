@@ -1,6 +1,7 @@
 """Figures of interval coverage against the true proportion, and over true proportion and n."""
 
 from collections.abc import Mapping
+from itertools import pairwise
 
 import numpy as np
 import pandas as pd
@@ -17,6 +18,7 @@ from coverage_lab.report.style import (
     RULE,
     SOFT,
     WASH,
+    WIDTH,
     Look,
     canvas,
     chief,
@@ -28,11 +30,12 @@ from coverage_lab.report.style import (
     spread,
     wrapped,
 )
-from coverage_lab.report.words import Document, count, level, place, planned_range, row_of, share, sizes
+from coverage_lab.report.words import Document, count, level, planned_range, row_of, share, sizes
 from coverage_lab.rounding import percent
 
 MOST_PANELS = 3
 PANEL = 3.3  # inches
+LABELS = 1.42  # inches to the right of a panel
 LABEL_GAP = 0.43  # inches between the middles of two labels of up to three lines
 SHADES = ("#08306b", "#2b6fb3", "#7fb2dc", "#c9dcee", "#f4f7fa")  # falling lightness = falling coverage; prints in grey
 MOST_ROWS_LABELLED = 16
@@ -49,15 +52,16 @@ def panels(document: Document) -> list[int]:
 def coverage(saved: Saved) -> Figure:
     """Interval coverage against p: enumerated curves, simulated points, the nominal level, the planned range."""
     shown = panels(saved.document)
-    height = 0.85 + PANEL * len(shown) + 0.12
-    figure = canvas(
-        "Interval coverage against the true proportion", _about(saved, shown), height, (0.72, 1.42, 0.5, 0.85)
-    )
-    grid = figure.subplots(len(shown), 1, sharex=True, squeeze=False, gridspec_kw={"hspace": 0.16})
+    height = 0.98 + PANEL * len(shown) + 0.12
+    left = 0.3 + 0.075 * len(share(1 - saved.document["alpha"] / 2))
+    margins = (left, LABELS, 0.5, 0.98)
+    figure = canvas("Interval coverage against the true proportion", _about(saved, shown), height, margins)
+    grid = figure.subplots(len(shown), 1, sharex=True, squeeze=False, gridspec_kw={"hspace": 0.2})
     for axes, n in zip(grid[:, 0], shown, strict=True):
         _coverage_panel(axes, saved, n)
-        if len(shown) > 1:
-            axes.set_title(f"n = {count(n)}", size=9, loc="left", pad=3)
+        which = f", n = {count(n)}" if len(shown) > 1 else ""
+        indent = (left - 0.12) / (WIDTH - left - LABELS)
+        axes.set_title(f"interval coverage{which}", size=8.5, loc="left", pad=5, x=-indent)
     grid[-1, 0].set_xlabel("true proportion")
     percent_axis(grid[-1, 0].xaxis)
     return figure
@@ -103,7 +107,6 @@ def _coverage_panel(axes: Axes, saved: Saved, n: int) -> None:
             )
     _points(axes, saved, n, styles)
     _labels(axes, document, n, {name: line for name, line in lines.items() if styles[name].emphasised})
-    axes.set_ylabel("interval coverage")
 
 
 def _lines(saved: Saved, n: int) -> Mapping[str, pd.DataFrame]:
@@ -202,7 +205,7 @@ def coverage_by_n(saved: Saved) -> Figure:
 
 
 def shade_edges(document: Document) -> list[float]:
-    """Class limits of coverage: nominal, what the standard asks everywhere, and twice and six times the nominal miss rate."""
+    """Class limits of coverage: nominal, what the standard asks everywhere, and 2 and 6 times the nominal miss rate."""
     alpha = document["alpha"]
     floor = min(document["standard"]["worst_miss"] * alpha, 1.9 * alpha)
     misses = [1.0, min(6 * alpha, 0.9), 2 * alpha, max(floor, 1.05 * alpha), alpha]
@@ -210,7 +213,7 @@ def shade_edges(document: Document) -> list[float]:
 
 
 def surface(saved: Saved, name: str, rows: list[int]) -> tuple[Array, Array]:
-    """Edges in p (k + 1) and coverage (rows, k): each n's curve read at common proportions, the nearest one counting."""
+    """Edges in p (k + 1) and coverage (rows, k): each n's curve read at the nearest of its proportions."""
     frame = saved.curve if not saved.curve.empty else saved.cells[saved.cells["route"] == "simulated"]
     here = frame[frame["method"] == name]
     p = np.unique(here["p"].to_numpy())
@@ -229,7 +232,7 @@ def surface(saved: Saved, name: str, rows: list[int]) -> tuple[Array, Array]:
 def _shade_legend(figure: Figure, edges: list[float], height: float) -> None:
     """The five classes in words below the panels."""
     names = [f"below {percent(edges[1])}"]
-    names += [f"{percent(a)} to {percent(b)}" for a, b in zip(edges[1:-2], edges[2:-1], strict=True)]
+    names += [f"{percent(a)} to {percent(b)}" for a, b in pairwise(edges[1:-1])]
     names.append(f"{percent(edges[-2])} or more")
     patches = [Patch(facecolor=shade, edgecolor=GREY, label=words) for shade, words in zip(SHADES, names, strict=True)]
     figure.legend(

@@ -14,8 +14,8 @@ from coverage_lab.checks import InputFault, shown
 from coverage_lab.plan_text import plan_digest, plan_text
 from coverage_lab.records import Audit
 from coverage_lab.report.document import FORMAT, audit_document
+from coverage_lab.report.protocol import protocol
 from coverage_lab.report.staging import staged
-from coverage_lab.report.words import protocol
 
 DATA_FILES = (
     *("audit.json", "methods.csv", "cells.csv", "curve.csv", "interval-table.csv", "plan.toml", "protocol.md"),
@@ -111,8 +111,8 @@ def check_target(folder: Path, plan_document: Mapping[str, Any], overwrite: bool
     found = document.get("provenance", {}).get("plan_sha256")
     if found != plan_digest(plan_document):
         raise InputFault(
-            f"{folder}: expected a new folder or an earlier report of this plan, but it holds the report of another plan "
-            f"({shown(document.get('plan', {}).get('title'))}); choose another folder with --out, or replace it "
+            f"{folder}: expected a new folder or an earlier report of this plan, but it holds the report of another "
+            f"plan ({shown(document.get('plan', {}).get('title'))}); choose another folder with --out, or replace it "
             "with --overwrite"
         )
 

@@ -1,6 +1,5 @@
 """A set of files that appears whole or not at all."""
 
-import os
 import secrets
 import shutil
 from collections.abc import Iterable, Iterator
@@ -60,12 +59,12 @@ def _replace(stage: Path, target: Path, obsolete: set[str]) -> None:
     try:
         for name in fresh:
             (target / name).parent.mkdir(parents=True, exist_ok=True)
-            os.replace(stage / name, target / name)
+            (stage / name).replace(target / name)
         for name in gone:
             (target / name).unlink()
     except BaseException:
         for name in kept:
-            os.replace(old / name, target / name)
+            (old / name).replace(target / name)
         for name in set(fresh) - set(kept):
             (target / name).unlink(missing_ok=True)
         raise

@@ -1,4 +1,4 @@
-"""One look for all figures: who is emphasised and how, the canvas, the coverage scale, labels that keep their distance."""
+"""One look for all figures: who is emphasised and how, the canvas, the coverage scale, labels kept apart."""
 
 import textwrap
 from collections.abc import Iterator, Mapping, Sequence
@@ -35,23 +35,6 @@ LOOKS: tuple[tuple[str, tuple[float, ...], str], ...] = (
     ("#cc79a7", (1.2, 1.2), "v"),
     ("#d55e00", (3, 1.3), "^"),
 )
-RC = {
-    "font.family": "DejaVu Sans",
-    "font.size": 9.0,
-    "axes.edgecolor": SOFT,
-    "axes.labelcolor": INK,
-    "axes.linewidth": 0.7,
-    "axes.spines.top": False,
-    "axes.spines.right": False,
-    "text.color": INK,
-    "xtick.color": SOFT,
-    "ytick.color": SOFT,
-    "xtick.labelcolor": INK,
-    "ytick.labelcolor": INK,
-    "xtick.labelsize": 8.5,
-    "ytick.labelsize": 8.5,
-    "hatch.linewidth": 0.6,
-}
 
 
 @dataclass(frozen=True)
@@ -75,7 +58,13 @@ def house_style() -> Iterator[None]:
     """Draw and save with this look whatever the user's own matplotlib settings are."""
     with mpl.rc_context():
         mpl.rcdefaults()
-        mpl.rcParams.update(RC)
+        mpl.rc("font", family="DejaVu Sans", size=9.0)
+        mpl.rc("axes", edgecolor=SOFT, labelcolor=INK, linewidth=0.7)
+        mpl.rc("axes.spines", top=False, right=False)
+        mpl.rc("text", color=INK)
+        mpl.rc("xtick", color=SOFT, labelcolor=INK, labelsize=8.5)
+        mpl.rc("ytick", color=SOFT, labelcolor=INK, labelsize=8.5)
+        mpl.rc("hatch", linewidth=0.6)
         yield
 
 
@@ -101,11 +90,15 @@ def pair(document: Document) -> list[str]:
     return [name for name in dict.fromkeys((chief(document), "wald")) if name and _measured(document, name)]
 
 
+def own(document: Document) -> list[str]:
+    """The methods that are the user's own."""
+    return list(dict.fromkeys(str(row["method"]) for row in document["methods"] if row["family"] == OWN_FAMILY))
+
+
 def emphasised(document: Document) -> list[str]:
     """At most five methods that a report draws in colour, in catalogue order."""
     per_n = [verdict["method"] or (verdict["closest"] or {}).get("method") for verdict in document["by_n"]]
-    own = [row["method"] for row in document["methods"] if row["family"] == OWN_FAMILY]
-    wanted = [chief(document), "wald", runner_up(document), *own, *per_n, *document["verdict"]["prefer"]]
+    wanted = [chief(document), "wald", runner_up(document), *own(document), *per_n, *document["verdict"]["prefer"]]
     listed = list(dict.fromkeys(name for name in wanted if name and _measured(document, name)))[:MOST_EMPHASISED]
     return [name for name in catalogue_order(document) if name in listed]
 
@@ -172,7 +165,7 @@ def percent_axis(axis: Axis, values: Sequence[float] | None = None) -> None:
     axis.set_minor_formatter(NullFormatter())
 
 
-def stretched(coverage: Array, alpha: float) -> Array:
+def stretched(coverage: Array | float, alpha: float) -> Array:
     """Coverage on a scale that gives room around the nominal level and still reaches 0 and 100 %.
 
     The logarithm of the miss rate, softened by alpha / 4; straight above 100 %, where only an axis margin lies.
@@ -191,10 +184,10 @@ def unstretched(height: Array, alpha: float) -> Array:
 
 def coverage_ticks(alpha: float, lowest: float) -> list[float]:
     """Ticks for a coverage axis that goes down to `lowest`."""
-    near = [1.0, 1 - alpha / 2, *(1 - alpha * k for k in (1, 2, 4))]
-    far = [share for share in (0.5, 0.0) if share < min(near) - alpha]
-    middle = [1 - 10 * alpha] if alpha * 10 < 0.35 else []
-    return sorted(round(tick, 12) for tick in {*near, *middle, *far} if lowest - 1e-9 <= tick <= 1)
+    near = [0.0, alpha / 2, alpha, 2 * alpha, 4 * alpha]
+    decades = [10.0**power for power in range(-12, 0) if 10.0**power > 5 * alpha]
+    misses = [*near, *decades, 0.5, 1.0]
+    return sorted({round(1 - miss, 14) for miss in misses if 0 <= 1 - miss <= 1 and lowest - 1e-12 <= 1 - miss})
 
 
 def coverage_limits(values: Array, alpha: float) -> tuple[float, float]:
@@ -215,7 +208,8 @@ def scale_coverage(axes: Axes, direction: str, values: Array, alpha: float) -> N
     else:
         axes.set_xscale("function", functions=functions)
         axes.set_xlim(*limits)
-    percent_axis(getattr(axes, f"{direction}axis"), _thinned(coverage_ticks(alpha, limits[0]), limits, alpha, TICK_ROOM[direction]))
+    ticks = _thinned(coverage_ticks(alpha, limits[0]), limits, alpha, TICK_ROOM[direction])
+    percent_axis(getattr(axes, f"{direction}axis"), ticks)
 
 
 def _thinned(ticks: Sequence[float], limits: tuple[float, float], alpha: float, room: float) -> list[float]:

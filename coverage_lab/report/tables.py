@@ -2,20 +2,18 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import pandas as pd
 
 from coverage_lab.report.figures import paired
 from coverage_lab.report.folder import Saved
-from coverage_lab.report.style import catalogue_order, chief, runner_up
+from coverage_lab.report.style import catalogue_order, chief, own, runner_up
 from coverage_lab.report.words import (
     NOTHING,
     SHORT_WIDTHS,
     Document,
     Row,
     count,
-    how_sure,
     label_of,
     least,
     limit,
@@ -27,9 +25,11 @@ from coverage_lab.report.words import (
     sizes,
     times,
 )
+from coverage_lab.rounding import Towards
 
 MOST_ROWS = 300  # longer tables go to their CSV file
-MOST_SIZES = 8  # columns of the table of worst coverage by n
+MOST_SIZES = 12  # columns of the table of worst coverage by n
+MOST_OWN = 3  # methods of the user's own beside the recommendation
 BLOCK = 50  # outcomes in one block of the interval table
 PASSES = {True: "yes", False: "no", None: "undecided"}
 
@@ -63,11 +63,6 @@ class Table:
     sortable: bool = False
 
 
-def figure(value: float | None, text: str) -> Cell:
-    """A number shown in words."""
-    return Cell(text, value)
-
-
 def relative(row: Row, reference: Row | None) -> float | None:
     """Mean width relative to the reference method's."""
     if reference is None or not reference["mean_width"] or row["mean_width"] is None:
@@ -95,7 +90,7 @@ def methods(document: Document) -> Table:
         *(Column("Worst over all p"), Column("Meets the standard", numeric=False), Column("Why", numeric=False)),
     )
     rows = tuple(_method_row(row, reference) for row in document["methods"] if row["n"] == n)
-    caption = f"All methods at n = {count(n)}, in catalogue order; misses, means and widths are means over the planned range"
+    caption = f"All methods at n = {count(n)}, in catalogue order; misses and widths are means over the planned range"
     return Table("methods", caption, columns, rows, sortable=True)
 
 
@@ -108,14 +103,14 @@ def _method_row(row: Row, reference: Row | None) -> tuple[Cell, ...]:
     measured = row["minimum_coverage"] is not None
     return (
         Cell(row["label"], None, mark, f"#{anchor(row['method'])}"),
-        figure(row["minimum_coverage"], least(row) if measured else NOTHING),
-        figure(row["minimum_at"], place(row["minimum_at"])),
-        figure(row["mean_coverage"], share(row["mean_coverage"], "down")),
-        figure(row["missed_below"], share(row["missed_below"])),
-        figure(row["missed_above"], share(row["missed_above"])),
-        figure(row["mean_width"], points(row["mean_width"])),
-        figure(ratio, NOTHING if ratio is None else f"{ratio:.2f}"),
-        figure(everywhere, share(everywhere, "down")),
+        Cell(least(row) if measured else NOTHING, row["minimum_coverage"]),
+        Cell(place(row["minimum_at"]), row["minimum_at"]),
+        Cell(share(row["mean_coverage"], "down"), row["mean_coverage"]),
+        Cell(share(row["missed_below"]), row["missed_below"]),
+        Cell(share(row["missed_above"]), row["missed_above"]),
+        Cell(points(row["mean_width"]), row["mean_width"]),
+        Cell(NOTHING if ratio is None else f"{ratio:.2f}", ratio),
+        Cell(share(everywhere, "down"), everywhere),
         passes(row),
         Cell(why, None, "small"),
     )
@@ -127,33 +122,43 @@ def anchor(method: str) -> str:
 
 
 def instead(document: Document) -> Table:
-    """The chief method, the runner-up and plus-or-minus, side by side."""
-    n = document["verdict"]["n"]
-    main = chief(document)
+    """The chief method, the runner-up, the user's own and plus-or-minus, side by side."""
+    n, main = document["verdict"]["n"], chief(document)
     reference = row_of(document, main, n)
-    named = "closest, not recommended" if document["verdict"]["method"] is None else "recommended"
-    roles = {main: named, runner_up(document): "runner-up"}
-    roles.setdefault("wald", "plus-or-minus")
     rows = []
-    for name, role in roles.items():
+    for name, role in _roles(document).items():
         row = row_of(document, name, n)
-        if row is not None and row["applies"] and row["minimum_coverage"] is not None:
-            ratio = relative(row, reference)
-            compared = "reference" if name == main else times(ratio)
-            rows.append(
-                (
-                    Cell(f"{row['label']}, {role}" if role != "plus-or-minus" else row["label"], None, "chief" if name == main else ""),
-                    figure(row["minimum_coverage"], least(row)),
-                    figure(row["minimum_at"], place(row["minimum_at"])),
-                    figure(row["mean_coverage"], share(row["mean_coverage"], "down")),
-                    figure(row["mean_width"], points(row["mean_width"])),
-                    Cell(compared, ratio),
-                    passes(row),
-                )
-            )
+        if row is not None and row["minimum_coverage"] is not None:
+            head = Cell(f"{row['label']}, {role}" if role else row["label"], None, "chief" if name == main else "")
+            rows.append((head, *_compared(row, reference)))
     titles = ("Worst coverage", "at p", "Mean coverage", SHORT_WIDTHS[document["side"]].capitalize(), "Compared")
     columns = (Column("Method", numeric=False), *map(Column, titles), Column("Meets the standard", numeric=False))
-    return Table("instead", "The recommendation, and what would have been reported instead", columns, tuple(rows))
+    return Table("instead", "What it delivers, and what others would have delivered instead", columns, tuple(rows))
+
+
+def _compared(row: Row, reference: Row | None) -> tuple[Cell, ...]:
+    """One method's figures beside the reference's width."""
+    ratio = relative(row, reference)
+    is_reference = reference is not None and row["method"] == reference["method"]
+    return (
+        Cell(least(row), row["minimum_coverage"]),
+        Cell(place(row["minimum_at"]), row["minimum_at"]),
+        Cell(share(row["mean_coverage"], "down"), row["mean_coverage"]),
+        Cell(points(row["mean_width"]), row["mean_width"]),
+        Cell("reference" if is_reference else times(ratio), ratio),
+        passes(row),
+    )
+
+
+def _roles(document: Document) -> dict[str | None, str]:
+    """Who stands in the comparison, and as what."""
+    named = document["verdict"]["method"] is not None
+    roles = {chief(document): "recommended" if named else "closest, not recommended"}
+    roles.setdefault(runner_up(document), "runner-up" if named else "next on the list")
+    for name in own(document)[:MOST_OWN]:
+        roles.setdefault(name, "your own")
+    roles.setdefault("wald", "")
+    return roles
 
 
 def by_n(document: Document) -> Table | None:
@@ -178,12 +183,12 @@ def _verdict_row(document: Document, verdict: Row) -> tuple[Cell, ...]:
     low, high = verdict["holds_on"] or (None, None)
     return (
         head,
-        Cell(row["label"]),
-        figure(row["minimum_coverage"], least(row)),
-        figure(row["mean_coverage"], share(row["mean_coverage"], "down")),
-        figure(row["mean_width"], points(row["mean_width"])),
-        figure(low, share(low, "up")),
-        figure(high, share(high, "down")),
+        Cell(row["label"] + (", too small to learn from" if verdict["too_small"] else "")),
+        Cell(least(row), row["minimum_coverage"]),
+        Cell(share(row["mean_coverage"], "down"), row["mean_coverage"]),
+        Cell(points(row["mean_width"]), row["mean_width"]),
+        Cell(share(low, "up"), low),
+        Cell(share(high, "down"), high),
     )
 
 
@@ -211,7 +216,7 @@ def bounds(document: Document) -> Table | None:
     listed = document["verdict"]["bounds_at"]
     if not listed:
         return None
-    towards = "up" if document["side"] == "upper" else "down"
+    towards: Towards = "up" if document["side"] == "upper" else "down"
     places = limit_places(document["verdict"]["n"])
     rows = tuple((Cell(count(item["events"])), Cell(limit(item["bound"], towards, places))) for item in listed)
     name = "Upper bound" if document["side"] == "upper" else "Lower bound"
@@ -238,7 +243,7 @@ def _blocks(table: pd.DataFrame) -> Iterator[pd.DataFrame]:
 def _block(saved: Saved, block: pd.DataFrame, shown: Sequence[str]) -> Table:
     """One block, limits rounded outward."""
     places = limit_places(saved.document["verdict"]["n"])
-    towards: dict[str, Any] = {"lower": "down", "upper": "up"}
+    towards: dict[str, Towards] = {"lower": "down", "upper": "up"}
     rows = tuple(
         (Cell(count(int(row["events"]))), *(Cell(limit(row[name], towards[name], places)) for name in shown))
         for row in block.to_dict("records")
@@ -272,9 +277,3 @@ def simulated(saved: Saved) -> Table | None:
     titles = ("True proportion", "Enumerated coverage", "Simulated coverage", "Standard error", "z")
     caption = f"{label_of(document, name)} at n = {count(n)}: the two routes side by side"
     return Table("simulated", caption, tuple(map(Column, titles)), tuple(rows))
-
-
-def sureness(document: Document) -> str:
-    """How the chief method's worst coverage was obtained."""
-    row = row_of(document, chief(document), document["verdict"]["n"])
-    return NOTHING if row is None else how_sure(row)

@@ -1,7 +1,6 @@
-"""Numbers as words, and the protocol text, all of it from a saved document (audit.json) alone."""
+"""Numbers as words, and the phrases that several pages share, from a saved document (audit.json) alone."""
 
 import math
-import re
 from collections.abc import Iterable, Mapping
 from decimal import Decimal
 from typing import Any
@@ -12,7 +11,6 @@ Document = Mapping[str, Any]
 Row = Mapping[str, Any]
 
 NOTHING = "–"
-BLANK = re.compile(r"\[[^\[\]]*: to be stated[^\[\]]*\]")
 
 HOW_SURE = {
     "certified": "exact minimum",
@@ -24,16 +22,13 @@ SIDES = {
     "upper": "one-sided upper bound",
     "lower": "one-sided lower bound",
 }
+NOUNS = {"two-sided": "interval", "upper": "upper bound", "lower": "lower bound"}
 WIDTHS = {
     "two-sided": "mean width",
     "upper": "mean excess of the bound over the true proportion",
     "lower": "mean excess of the true proportion over the bound",
 }
 SHORT_WIDTHS = {"two-sided": "mean width", "upper": "mean excess", "lower": "mean excess"}
-TARGETS = {
-    "population": "the units of this population themselves",
-    "process": "the process that produces such units",
-}
 
 
 def share(value: float | None, towards: Towards = "nearest") -> str:
@@ -57,7 +52,7 @@ def points(value: float | None) -> str:
     if value is None:
         return NOTHING
     hundred = value * 100
-    places = 2 if hundred == 0 else max(0, 2 - math.floor(math.log10(abs(hundred))))
+    places = 0 if hundred == 0 else max(0, 2 - math.floor(math.log10(abs(hundred))))
     return f"{float(rounded(hundred, min(places, 12))):,.{min(places, 12)}f} points"
 
 
@@ -100,11 +95,6 @@ def count(value: int) -> str:
     return f"{value:,}".replace(",", "\u202f")
 
 
-def one_line(words: object) -> str:
-    """The user's words on one line, harmless in Markdown."""
-    return " ".join(str(words).split()).replace("<", r"\<")
-
-
 def level(document: Document) -> str:
     """'95 % two-sided interval', '95 % one-sided upper bound'."""
     return f"{percent(document['confidence'])} {SIDES[document['side']]}"
@@ -139,7 +129,7 @@ def label_of(document: Document, method: str) -> str:
 
 
 def least(row: Row) -> str:
-    """The worst interval coverage, rounded down, with its simulation error when it has one: '93.4 %', '94.1 % ± 0.3 points'."""
+    """The worst interval coverage, rounded down: '93.4 %', or '94.1 % ± 0.3 points' when it was simulated."""
     figure = share(row["minimum_coverage"], "down")
     error = row["simulated"]["standard_error"]
     return f"{figure} ± {points(2 * error)}" if row["minimum_is"] == "simulated" and error is not None else figure
@@ -164,8 +154,8 @@ def standard_words(document: Document) -> str:
     standard, alpha = document["standard"], document["alpha"]
     worst, mean = standard["worst_miss"] * alpha, standard["mean_miss"] * alpha
     return (
-        f"interval coverage of at least {percent(1 - worst)} at every true proportion in the planned range and of at least "
-        f"{percent(1 - mean)} on average over it"
+        f"interval coverage of at least {percent(1 - worst)} at every true proportion in the planned range and of at "
+        f"least {percent(1 - mean)} on average over it"
     )
 
 
@@ -182,124 +172,18 @@ def simulation_words(row: Row, document: Document) -> str | None:
     drawn = row["simulated"]
     if drawn["coverage_min"] is None:
         return None
-    where = "" if drawn["coverage_min_at"] is None else f" at p = {place(drawn['coverage_min_at'])}"
+    studies = (
+        f"In {count(drawn['replicates'])} simulated studies at {each(len(document['plan']['simulation']['grid']))}"
+    )
+    if drawn["coverage_min"] == 1:
+        return f"{studies} every interval contained the true proportion."
     return (
-        f"In {count(drawn['replicates'])} simulated studies at each of {_cells(document, row)} true proportions, "
-        f"coverage was lowest{where}, {percent(drawn['coverage_min'])}, and {percent(drawn['coverage_mean'])} on average "
+        f"{studies} coverage was {percent(drawn['coverage_min'])} at its lowest "
+        f"(p = {place(drawn['coverage_min_at'])}) and {percent(drawn['coverage_mean'])} on average "
         f"(Monte Carlo standard error at most {points(drawn['standard_error'])})."
     )
 
 
-def _cells(document: Document, row: Row) -> int:
-    """How many true proportions were simulated."""
-    return len(document["plan"]["simulation"]["grid"])
-
-
-def protocol(document: Document) -> str:
-    """The text for the protocol, as Markdown."""
-    title = one_line(document["plan"].get("title") or "Untitled plan")
-    parts = [f"**{heading}.** {text}" for heading, text in protocol_parts(document)]
-    cautions = [f"- {caution}" for caution in document["cautions"]]
-    return (
-        "\n\n".join(
-            [f"# {title}: interval method, text for the protocol", *parts, "**Cautions.**", "\n".join(cautions)]
-        )
-        + "\n"
-    )
-
-
-def protocol_parts(document: Document) -> list[tuple[str, str]]:
-    """The protocol text as (heading, paragraph); what the plan leaves open is a marked blank."""
-    verdict = document["verdict"]
-    row = row_of(document, verdict["method"], verdict["n"])
-    return [
-        ("Estimand", _estimand(document)),
-        ("Interval", _interval(document, row)),
-        ("Sample size", _sample_size(document)),
-        ("Planned range", _range(document)),
-        ("Standard", _standard(document)),
-        ("What the method delivers", _delivers(document, row)),
-        ("Fixed before data", _fixed(row)),
-        ("Computation", _computation(document)),
-    ]
-
-
-def _stated(words: object, what: str) -> str:
-    """The user's words, or a marked blank."""
-    return one_line(words) if words else f"[{what}: to be stated]"
-
-
-def _estimand(document: Document) -> str:
-    study = document["plan"].get("study") or {}
-    target = TARGETS.get(study.get("target") or "", "[target: to be stated, this population or the process behind it]")
-    return (
-        f"The true proportion with the outcome “{one_line(document['plan']['outcome']['name'])}”. "
-        f"Population: {_stated(study.get('population'), 'population')}. Unit: {_stated(study.get('unit'), 'unit')}. "
-        f"The proportion describes {target}."
-    )
-
-
-def _interval(document: Document, row: Row | None) -> str:
-    alpha, side = document["alpha"], document["side"]
-    error = f"α = {alpha:g}, {tail(document):g} per tail" if side == "two-sided" else f"α = {alpha:g}, all on one side"
-    if row is None:
-        return (
-            f"A {level(document)} ({error}) by [interval method: to be stated; this audit names none]. "
-            f"{document['verdict']['sentence']}"
-        )
-    ends = f" At 0 and at n events: {row['ends']}." if row["ends"] else ""
-    source = f", {row['source']}" if row["source"] else ""
-    return (
-        f"The proportion will be reported with a {level(document)} ({error}) by the method “{one_line(row['label'])}” "
-        f"({one_line(row['method'])}{source}).{ends}"
-    )
-
-
-def _sample_size(document: Document) -> str:
-    return f"n = {count(document['verdict']['n'])}; sampling model: {document['plan']['design']['kind']} random sample."
-
-
-def _range(document: Document) -> str:
-    low, high = planned_range(document)
-    study = document["plan"].get("study") or {}
-    return (
-        f"The true proportion is expected to lie from {range_words(low, high)}. "
-        f"Basis: {_stated(study.get('range_basis'), 'basis of the range')}."
-    )
-
-
-def _standard(document: Document) -> str:
-    kind = document["standard"]["kind"]
-    source = " (Bradley 1978: worst miss rate 1.5 α, mean miss rate 1.1 α)" if kind == "bradley" else ""
-    return f"Set in advance: {standard_words(document)}{source}."
-
-
-def _delivers(document: Document, row: Row | None) -> str:
-    if row is None:
-        return "No method is named, so nothing is claimed here."
-    mean = "simulated, over the grid" if row["minimum_is"] == "simulated" else f"exact, {weighting(document)}"
-    low, high = document["verdict"]["holds_on"] or (None, None)
-    reach = (
-        ""
-        if low is None or high is None
-        else (f" The standard is met for true proportions from {percent(low, 'up')} to {percent(high, 'down')}.")
-    )
-    simulated = simulation_words(row, document) if row["minimum_is"] != "simulated" else None
-    return (
-        f"Over the planned range the worst interval coverage is {least(row)} ({how_sure(row)}) and the mean is "
-        f"{share(row['mean_coverage'], 'down')} ({mean}); {WIDTHS[document['side']]} {points(row['mean_width'])}.{reach}"
-        + (f" {simulated}" if simulated else "")
-    )
-
-
-def _fixed(row: Row | None) -> str:
-    method = "The method" if row is not None else "[date and method: to be stated] The method"
-    return f"{method}, the confidence, the side and the sample size were fixed before data were seen and will not be changed."
-
-
-def _computation(document: Document) -> str:
-    made = document["provenance"]
-    libraries = ", ".join(f"{name} {version}" for name, version in made["libraries"].items())
-    return (
-        f"coverage-lab {made['version']} ({libraries}); seed {made['seed']}; SHA-256 of the plan {made['plan_sha256']}."
-    )
+def each(cells: int) -> str:
+    """'each of 11 true proportions'."""
+    return "the one true proportion" if cells == 1 else f"each of {count(cells)} true proportions"

@@ -19,14 +19,15 @@ from coverage_lab.sizing.widths import Chances, assurance, expected, half_widths
 
 EVENTS = 40_000  # of one block and method: large enough to hide the calls, small enough for memory and the progress line
 NARROW = 1.5  # standard errors beyond a limit's own reach within which events can still cover in the range
-COLUMNS = ("worst_miss", "minimum_at", "mean_miss", "half_width", "assurance")
+COVERAGE_COLUMNS = ("worst_miss", "minimum_at", "mean_miss")
+COLUMNS = (*COVERAGE_COLUMNS, "half_width", "assurance")
 
 Table = dict[str, Array | Counts]
 
 
 @dataclass(frozen=True)
 class Asked:
-    """What is asked of every n; `half_width` None means that widths are not asked for."""
+    """What is asked of every n: the figures named in `columns`; the widths among them need a `half_width`."""
 
     low: float
     high: float
@@ -35,6 +36,7 @@ class Asked:
     half_width: float | None
     side: Side
     tail: float
+    columns: tuple[str, ...] = COLUMNS
 
     @property
     def over(self) -> Range:
@@ -60,7 +62,8 @@ def asked(plan: Plan) -> Asked:
     """The plan's question."""
     outcome = plan.outcome
     d = plan.precision.half_width if plan.precision else None
-    return Asked(outcome.low, outcome.high, outcome.prior, outcome.expected, d, plan.side, plan.tail)
+    columns = COLUMNS if plan.precision else COVERAGE_COLUMNS
+    return Asked(outcome.low, outcome.high, outcome.prior, outcome.expected, d, plan.side, plan.tail, columns)
 
 
 def scanned(method: Method, coverage: bool) -> Scanned:
@@ -79,7 +82,8 @@ class _Block:
     def widths(self) -> Rows:
         """The events that the expected and the worst p can produce."""
         q = self.question
-        return rows(self.n, min(q.middle, q.expected), max(q.middle, q.expected))
+        worst_p = q.middle if "half_width" in q.columns else q.expected
+        return rows(self.n, min(worst_p, q.expected), max(worst_p, q.expected))
 
     @cached_property
     def narrow(self) -> Rows:
@@ -87,7 +91,7 @@ class _Block:
         q = self.question
         z = np.sqrt(-2 * np.log(q.tail))  # at least the normal quantile of the tail
         near = rows(self.n, q.low, q.high, float((z + NARROW) ** 2 / 2))
-        return near if q.half_width is None else joined(near, self.widths)
+        return joined(near, self.widths) if "half_width" in q.columns or "assurance" in q.columns else near
 
     @cached_property
     def full(self) -> Rows:
@@ -149,13 +153,14 @@ def _figures(block: _Block, item: Scanned) -> Table:
         where, limits = _covering(block, item)
     else:
         where, limits = block.widths, limits_on(block.widths, item.method, q)
-    chances, prior = block.on(where, item.coverage and q.low < q.high)
+    chances, prior = block.on(where, item.coverage and "mean_miss" in q.columns and q.low < q.high)
     table: Table = {}
     if item.coverage:
         table["worst_miss"], table["minimum_at"] = worst(where, limits.lower, limits.upper, q.low, q.high)
         table["mean_miss"] = prior.mean_miss(limits.lower, limits.upper) if prior else table["worst_miss"]
-    if q.half_width is not None:
+    if "half_width" in q.columns:
         table["half_width"] = _half_width(block, item.method, chances, limits)
+    if "assurance" in q.columns and q.half_width is not None:
         table["assurance"] = assurance(chances, limits.lower, limits.upper, q.side, q.half_width, q.expected)
     return table
 
@@ -175,8 +180,9 @@ def _half_width(block: _Block, method: Method, chances: Chances, limits: Limits)
 
 def cost(question: Asked, n: Counts) -> Array:
     """How many events each n brings; (n,)."""
-    where = rows(n, min(question.low, question.expected), max(question.high, question.expected), WIDE / 2)
-    return where.size.astype(float)
+    q = question
+    ends = (q.low, q.high) if "worst_miss" in q.columns else (q.middle, q.middle)
+    return rows(n, min(*ends, q.expected), max(*ends, q.expected), WIDE / 2).size.astype(float)
 
 
 def scan(

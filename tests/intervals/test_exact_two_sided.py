@@ -124,7 +124,7 @@ def worst_coverage(n, lower, upper):
 
 
 def shortest_by_bisection(n, alpha):
-    """The stated construction taken literally: each limit moved by bisection on the worst coverage of the whole table."""
+    """The stated construction taken literally: each limit moved by bisection on the whole table's worst coverage."""
     k = np.arange(n + 1)
     lower = np.where(k == 0, 0.0, stats.beta.ppf(alpha / 2, np.maximum(k, 1), n - k + 1))
     upper = 1 - lower[::-1]
@@ -155,7 +155,8 @@ def test_tables_hold_their_confidence_and_share_their_end_points(function, n, ta
     ends = np.unique(np.concatenate([lower, upper]))
     ends = ends[(ends > 0) & (ends < 1)]
     gaps = np.diff(ends) / ends[1:]
-    assert not np.any((gaps > 2e-14) & (gaps < 1e-9)), "end points that should be one are not"
+    rounding = 2e-14 if function is blaker else 0.0  # its ties are solved twice, the others' are one number
+    assert not np.any((gaps > rounding) & (gaps < 1e-9)), "end points that should be one are not"
     apart = np.concatenate([[True], gaps > 1e-13])
     cuts = np.concatenate([[0.0], ends[apart], [1.0]])
     middle = (cuts[1:] + cuts[:-1]) / 2

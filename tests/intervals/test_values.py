@@ -8,11 +8,11 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from scipy.stats import binomtest
+from scipy.stats import binom, binomtest
 from statsmodels.stats.proportion import proportion_confint
 
 from coverage_lab.intervals import CATALOGUE
-from coverage_lab.records import tail_of
+from coverage_lab.records import alpha_of, tail_of
 
 FOLDER = Path(__file__).parents[1] / "check_values"
 
@@ -66,7 +66,7 @@ def test_rows_are_what_the_derivation_gives(monkeypatch: pytest.MonkeyPatch) -> 
     faults = []
     for row in ROWS:
         quick = int(row["trials"]) <= 10 and row["confidence"] == "0.95"
-        if quick or (row["status"] != "derived" and int(row["trials"]) <= 200):
+        if quick or (row["status"] != "derived" and int(row["trials"]) <= 60):
             counts = int(row["events"]), int(row["trials"])
             came = derive.row(row["member"], *counts, row["confidence"], row["side"])
             if not all(is_near(float(came[end]), row, end) for end in ("lower", "upper")):
@@ -82,6 +82,36 @@ def test_rows_are_well_formed() -> None:
         assert ("from memory" in row["source"]) == (row["status"] == "M"), row
         assert float(row["lower"]) <= float(row["upper"]), row
         assert 0 < float(row["tolerance"]) <= 5e-4, row
+
+
+# --- exact sets, literally --------------------------------------------------------------------------------------------
+def blaker_acceptance(x: int, n: int, p: np.ndarray) -> np.ndarray:
+    """P(the lesser tail of X is as small as that of x), at each p."""
+    k = np.arange(n + 1)
+    lesser = np.minimum(binom.cdf(k, n, p[:, None]), binom.sf(k - 1, n, p[:, None]))
+    chances = binom.pmf(k, n, p[:, None])
+    return np.sum(chances, axis=1, where=lesser <= lesser[:, [x]] * (1 + 1e-11))
+
+
+def sterne_acceptance(x: int, n: int, p: np.ndarray) -> np.ndarray:
+    """P(X is as improbable as x), at each p."""
+    chances = binom.pmf(np.arange(n + 1), n, p[:, None])
+    return np.sum(chances, axis=1, where=chances <= chances[:, [x]] * (1 + 1e-11))
+
+
+@pytest.mark.parametrize(("n", "confidence"), [(5, 0.8), (10, 0.95), (21, 0.9), (27, 0.99), (31, 0.95)])
+@pytest.mark.parametrize(("name", "acceptance"), [("blaker", blaker_acceptance), ("sterne", sterne_acceptance)])
+def test_limits_are_the_outermost_accepted_proportions(
+    name: str, acceptance: Callable, n: int, confidence: float
+) -> None:
+    alpha, grid = alpha_of(confidence), np.linspace(0, 1, 4001)[1:-1]
+    lower, upper = CATALOGUE[name].function(np.arange(n + 1), n, alpha / 2)
+    for x in range(n + 1):
+        accepted = grid[acceptance(x, n, grid) > alpha]
+        assert lower[x] <= accepted[0], x
+        assert accepted[-1] <= upper[x], x
+        just_inside = np.array([lower[x] + 1e-9 if x else 1e-9, upper[x] - 1e-9])
+        assert np.all(acceptance(x, n, just_inside) > alpha), x
 
 
 # --- whole tables of the general libraries --------------------------------------------------------------------------

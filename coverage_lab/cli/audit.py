@@ -1,0 +1,158 @@
+"""`coverage-lab audit`: the main job."""
+
+import os
+from collections.abc import Callable, Mapping
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from coverage_lab.checks import InputFault
+from coverage_lab.cli import options
+from coverage_lab.cli.door import NO_RECOMMENDATION
+from coverage_lab.cli.progress import progress
+from coverage_lab.cli.tables import show_json
+
+if TYPE_CHECKING:
+    from coverage_lab.records import Audit, Plan
+
+DEFINING = ("n", "range", "expected")  # options that make a plan without a file
+
+EXAMPLES = """\b
+Examples:
+  coverage-lab audit
+  coverage-lab audit plan.toml
+  coverage-lab audit --n 250 --range 0.005 0.05
+  coverage-lab audit --n 100 --n 150 --n 250 --expected 0.02 --side upper --out upper-report
+  coverage-lab audit plan.toml --replicates 100000 --workers 2 --json > answer.json
+"""
+
+
+@click.command(epilog=EXAMPLES, short_help="Recommend a method for a planned study, and write the report.")
+@click.argument("plan", type=click.Path(path_type=Path), required=False)
+@click.option("--n", type=options.number, multiple=True, metavar="N", help="Planned units; may be repeated.")
+@click.option(
+    "--range",
+    type=options.number,
+    nargs=2,
+    metavar="LOW HIGH",
+    help="Planned range of the true proportion; a plan's own grid gives way to 11 points over it.",
+)
+@click.option("--expected", type=options.number, metavar="P", help="The likeliest true proportion.")
+@options.confidence
+@options.side
+@click.option("--replicates", type=options.number, metavar="R", help="Simulated studies for each true proportion.")
+@click.option("--seed", type=options.number, metavar="S", help="Seed of the simulation.")
+@click.option(
+    "--out", type=click.Path(path_type=Path), metavar="DIR", help="Report folder. [default: named after PLAN]"
+)
+@click.option("--overwrite", is_flag=True, help="Replace what the report folder holds, whatever it is.")
+@click.option("--workers", type=options.number, default=1, metavar="N", help="Processes for large work. [default: 1]")
+@options.as_json
+@options.quiet
+def audit(
+    plan: Path | None,
+    out: Path | None,
+    overwrite: bool,
+    workers: object,
+    as_json: bool,
+    quiet: bool,
+    **overrides: object,
+) -> None:
+    """Measure every interval method for PLAN, recommend one, and write the report folder.
+
+    Options replace what the plan says. Without PLAN, --n with --range or --expected make a plan of their own; without
+    these, too, the built-in demonstration is audited. The same plan and seed give the same figures, whatever --workers.
+    """
+    read, name = _plan_of(plan, overrides)
+    chosen, processes = options.together(read, lambda: _processes(workers))
+    folder = out if out is not None else Path(f"{name}-report")
+    _check_folder(folder, chosen, overwrite)
+    done = _computed(chosen, processes, folder, quiet)
+    page, failure = _written(done, folder, overwrite)
+    _show(done, page, as_json, quiet)
+    if failure is not None:
+        raise failure
+    if done.verdict.status != "recommended":
+        click.get_current_context().exit(NO_RECOMMENDATION)
+
+
+def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable[[], Plan], str]":
+    """How the plan is had, and the name of its report: from the file, from options alone, or the demonstration."""
+    from coverage_lab.plan import DEMONSTRATION, make_plan, read_plan
+
+    if path is not None:
+        return lambda: read_plan(path, overrides=overrides), path.stem
+    if any(overrides[name] not in (None, ()) for name in DEFINING):
+        return lambda: make_plan({}, overrides=overrides), "audit"
+    return lambda: read_plan(DEMONSTRATION, overrides=overrides), DEMONSTRATION.stem
+
+
+def _processes(workers: object) -> int:
+    """The number of workers.
+
+    Raises:
+        InputFault: not a whole number of at least 1.
+    """
+    from coverage_lab.plan import of_option
+
+    if isinstance(workers, int) and workers >= 1:
+        return workers
+    raise InputFault(of_option("--workers", workers, "a whole number of at least 1"))
+
+
+def _check_folder(folder: Path, plan: "Plan", overwrite: bool) -> None:
+    """Refuse before the long work what could not be written after it.
+
+    Raises:
+        InputFault: the folder holds something else, or nothing can be written there.
+    """
+    from coverage_lab.report.folder import check_target
+
+    check_target(folder, plan.document, overwrite)
+    above = _existing(folder)
+    if not above.is_dir():
+        raise InputFault(f"{folder}: expected a folder for the report, but {above} is a file")
+    if not os.access(above, os.W_OK | os.X_OK):
+        raise InputFault(f"{folder}: expected a folder for the report, but {above} is not writable")
+
+
+def _existing(folder: Path) -> Path:
+    """The folder itself, or the nearest above it that exists."""
+    return next(path for path in (folder.absolute(), *folder.absolute().parents) if path.exists())
+
+
+def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
+    """The audit; finished draws are kept beside the report until it is done, so that an interrupted run can go on."""
+    import sqlite3
+
+    from coverage_lab import study
+
+    keep = _existing(folder.parent) / f".{folder.name}.kept"
+    with progress(quiet) as report:
+        try:
+            return study.audit(plan, workers=workers, progress=report, keep=keep)
+        except sqlite3.Error as error:
+            raise OSError(0, f"finished work cannot be kept: {error}", str(keep)) from error
+
+
+def _written(done: "Audit", folder: Path, overwrite: bool) -> tuple[Path | None, OSError | None]:
+    """The report's page; or why it could not be written, after which the answer is still shown."""
+    from coverage_lab import study
+
+    try:
+        return study.write_report(done, folder, overwrite=overwrite), None
+    except OSError as error:
+        return None, error
+
+
+def _show(done: "Audit", page: Path | None, as_json: bool, quiet: bool) -> None:
+    """The answer on stdout."""
+    from coverage_lab.cli.answer import answer
+    from coverage_lab.report.document import audit_document
+
+    document = audit_document(done)
+    if as_json:
+        show_json(document)
+    elif not quiet:
+        click.echo("\n".join(answer(document, page)))
