@@ -7,6 +7,8 @@ of binomial probabilities", 2000). Tails are sums of points outward from the cou
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from numpy.typing import ArrayLike
 
@@ -25,6 +27,13 @@ def finite_point(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: Arra
     p = np.where(whole, 0.5, n / size)
     ratio = point(x, m, p) * point(n - x, size - m, p) / point(n, size, p)
     return np.where(possible, np.where(whole, 1.0, ratio), 0.0)
+
+
+def reachable(population: int, low: float, high: float) -> Array:
+    """Every M/N in [low, high], ascending: the proportions that a population of N can have."""
+    first, last = math.floor(low * population) - 1, math.ceil(high * population) + 1
+    truths = np.arange(max(first, 0), min(last, population) + 1) / population
+    return truths[(truths >= low) & (truths <= high)]
 
 
 def finite_below(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: ArrayLike) -> Array:

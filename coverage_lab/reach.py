@@ -11,7 +11,6 @@ from coverage_lab.engine.bounds import evaluate
 from coverage_lab.engine.exact import Listed, listed, means_of, restricted
 from coverage_lab.engine.means import Range
 from coverage_lab.engine.minimum import Segments, segments
-from coverage_lab.probability import at_least, at_most
 from coverage_lab.records import Limits, Method, Plan
 
 WHOLE_UP_TO = 20_000  # up to this n the reach is sought over all of (0, 1), beyond it within a tenfold wider range
@@ -77,7 +76,7 @@ def holds_on(plan: Plan, n: int, name: str) -> tuple[float, float]:
     low, high = plan.outcome.low, plan.outcome.high
     span = (0.0, 1.0) if n <= WHOLE_UP_TO else (low / 10, min(1.0, high * 10))
     parts = listed(plan.design, [method_of(plan, name)], n, span, plan.side, plan.tail)
-    if len(parts) != 1:
+    if len(parts) != 1 or parts[0].part.population is not None:
         return low, high
     piece = parts[0].piece(0)
     allowed = plan.standard.worst_miss * plan.alpha
@@ -116,8 +115,7 @@ def _crossing(part: Listed, left: float, right: float, allowed: float, inside: f
 
     def excess(p: float) -> float:
         at = np.array([p])
-        miss = at_most(covers[:1] - 1, piece.trials, at) + at_least(covers[-1:] + 1, piece.trials, at)
-        return float(miss[0]) - allowed
+        return float(piece.outside(covers[:1] - 1, covers[-1:] + 1, at)[0]) - allowed
 
     root = float(brentq(excess, left, right, xtol=1e-15))
     step = math.copysign(1e-12, inside - root)

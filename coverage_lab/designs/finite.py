@@ -12,7 +12,7 @@ from coverage_lab.designs.lens import Lens
 from coverage_lab.designs.seen import recorded
 from coverage_lab.designs.simple import RAREST_PART, Simple, evaluable
 from coverage_lab.probability import likely, point
-from coverage_lab.probability_finite import finite_point
+from coverage_lab.probability_finite import finite_point, reachable
 from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
 
 LARGEST_POPULATION = 10_000_000
@@ -75,9 +75,7 @@ class Finite(Frame):
         """Every M/N in [low, high]; every p of an infinite population."""
         if self.endless:
             return None
-        first, last = math.floor(low * self.population) - 1, math.ceil(high * self.population) + 1
-        truths = np.arange(max(first, 0), min(last, int(self.population)) + 1) / self.population
-        return truths[(truths >= low) & (truths <= high)]
+        return reachable(int(self.population), low, high)
 
     def units(self, p: float, n: int, size: int, rng: np.random.Generator) -> Units:
         """`size` hypergeometric counts, one group."""

@@ -34,6 +34,13 @@ class Range:
         inside = float(np.diff(betainc(a + 1, b, [self.low, self.high]))[0])
         return a / (a + b) * inside / self.mass
 
+    def masses(self, points: Array) -> Array:
+        """The prior's chance, within the range, of what is nearer to each ascending point than to the others."""
+        if len(points) == 1 or self.low == self.high:
+            return np.full(len(points), 1 / len(points))
+        cuts = np.concatenate([[self.low], (points[1:] + points[:-1]) / 2, [self.high]])
+        return np.asarray(np.diff(betainc(*self.prior, cuts)) / self.mass)
+
 
 def range_means(events: Counts, n: int, limits: Stack, over: Range, side: Side) -> dict[str, Array]:
     """Mean miss rates, width, outside-[0,1] and zero-width rates over the range; (methods,) each.
@@ -53,6 +60,25 @@ def range_means(events: Counts, n: int, limits: Stack, over: Range, side: Side) 
         "mean_width": _mean_width(limits, chance, over, side),
         "outside_unit_rate": limits.outside @ chance,
         "zero_width_rate": limits.zero @ chance,
+    }
+
+
+def point_means(points: Array, weights: Array, limits: Stack, side: Side) -> dict[str, Array]:
+    """The same means over ascending truths; weights (points, samples) are the joint chances of truth and sample."""
+    by_sample, by_point = weights.sum(axis=0), weights.sum(axis=1)
+    until = np.concatenate([np.zeros((1, weights.shape[1])), np.cumsum(weights, axis=0)])
+    columns = np.arange(weights.shape[1])
+    right_of_upper = np.searchsorted(points, limits.upper, side="right")
+    left_of_lower = np.searchsorted(points, limits.lower, side="left")
+    mean = float(points @ by_point)
+    width = limits.upper if side == "upper" else -limits.lower if side == "lower" else limits.upper - limits.lower
+    offset = {"upper": -mean, "lower": mean}.get(side, 0.0)
+    return {
+        "missed_below": (until[-1] - until[right_of_upper, columns]).sum(axis=1),
+        "missed_above": until[left_of_lower, columns].sum(axis=1),
+        "mean_width": width @ by_sample + offset,
+        "outside_unit_rate": limits.outside @ by_sample,
+        "zero_width_rate": limits.zero @ by_sample,
     }
 
 

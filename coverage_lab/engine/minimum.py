@@ -3,17 +3,20 @@
 Coverage at p of a binomial design is K(p) = sum of P(X = x) over the covering x. Between two neighbouring end points of
 the intervals the covering set is constant. When it is a run i..j, K' = n [b(i-1; n-1, p) - b(j; n-1, p)] changes sign
 once, from + to -, so the infimum over the segment is at one of its ends (Wang 2007, Stat. Sinica 17:361). Intervals are
-closed, so the value at an end point itself is never below its two limits and needs no look.
+closed, so the value at an end point itself is never below its two limits and needs no look. With several pieces each
+run's probability rises and falls by itself: the sum of the lesser ends bounds the segment, and what that leaves open is
+branched on.
 """
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
-from coverage_lab.engine.branch import Runs, branch_and_bound
+from coverage_lab.engine.branch import GAP, Runs, branch_and_bound
 from coverage_lab.probability import at_least, at_most
+from coverage_lab.probability_finite import finite_above, finite_below
 from coverage_lab.records import Array, Minimum
 
 SAME = 1e-13  # end points closer than this, relatively, are one: exact limits share them up to rounding
@@ -27,20 +30,48 @@ Flags = NDArray[np.bool_]
 
 @dataclass(frozen=True)
 class Piece:
-    """One binomial part, X ~ Binomial(trials, chance(p)), with `weight`; limits for x = first and on, none left out."""
+    """One binomial part, X ~ Binomial(trials, chance(p)), with `weight`; limits for x = first and on, none left out.
+
+    chance(p) runs in a straight line from at_zero to at_one, the same for all pieces of a design. With a `population`
+    the part is hypergeometric instead, p·population of its units being events.
+    """
 
     trials: int
     weight: float
     first: int
     lower: Array
     upper: Array
+    at_zero: float = 0.0
+    at_one: float = 1.0
+    population: int | None = None
+
+    def chance(self, p: Array) -> Array:
+        """The chance that a unit is recorded as an event."""
+        return self.at_zero * (1 - p) + self.at_one * p
+
+    def outside(self, below: ArrayLike, above: ArrayLike, p: Array) -> Array:
+        """P(X <= below) + P(X >= above) at truth p, with full relative accuracy in both tails."""
+        return self.at_most(below, p) + self.at_least(above, p)
+
+    def at_most(self, x: ArrayLike, p: Array) -> Array:
+        """P(X <= x) at truth p."""
+        if self.population is None:
+            return at_most(x, self.trials, self.chance(p))
+        return finite_below(x, self.trials, self.population, np.rint(p * self.population))
+
+    def at_least(self, x: ArrayLike, p: Array) -> Array:
+        """P(X >= x) at truth p."""
+        if self.population is None:
+            return at_least(x, self.trials, self.chance(p))
+        return finite_above(x, self.trials, self.population, np.rint(p * self.population))
 
 
 @dataclass(frozen=True)
 class Segments:
     """Open segments of the range with constant covering sets, and the miss rates at their two ends from inside.
 
-    `ordered` is False where some covering set is not a run: there the ends prove nothing.
+    `ordered` is False where some covering set is not a single run: there the ends prove nothing. `worst` is a rate that
+    no miss rate on the segment exceeds; infinite where the covering set of some piece is not a run.
     """
 
     left: Array
@@ -48,6 +79,7 @@ class Segments:
     miss_left: Array
     miss_right: Array
     ordered: Flags
+    worst: Array
 
 
 def identity(p: Array) -> Array:
@@ -75,29 +107,29 @@ def edges(pieces: Sequence[Piece], low: float, high: float) -> tuple[Array, Arra
     return cuts[gap], cuts[gap + 1], (shared[:-1] & _UPPER) > 0, (shared[1:] & _LOWER) > 0
 
 
-def segments(
-    pieces: Sequence[Piece], low: float, high: float, chance: Chance = identity, *, every_end: bool = True
-) -> Segments:
+def segments(pieces: Sequence[Piece], low: float, high: float, *, every_end: bool = True) -> Segments:
     """The segments with the miss rate at both ends of each, or only where an end can be worst (elsewhere 0)."""
     left, right, falls_left, falls_right = edges(pieces, low, high)
     rows = np.arange(len(left))
     at_left, at_right = (rows, rows) if every_end else (rows[falls_left], rows[falls_right])
-    at = chance(np.concatenate([left[at_left], right[at_right]]))
+    ends = np.concatenate([left[at_left], right[at_right]])
     both = np.concatenate([at_left, at_right])
-    ordered = np.full(len(left), len(pieces) == 1)
-    miss = np.zeros(len(both))
+    runs = np.ones(len(left), dtype=bool)
+    miss_left, miss_right, worst = np.zeros(len(left)), np.zeros(len(left)), np.zeros(len(left))
     for piece in pieces:
-        begin, end, run = _run(piece, (left + right) / 2)
-        ordered &= run
+        begin, end, run = covering_run(piece, (left + right) / 2)
+        runs &= run
         begin, end = begin[both], end[both]
-        outside = at_most(piece.first + begin - 1, piece.trials, at) + at_least(piece.first + end, piece.trials, at)
-        miss += piece.weight * np.where(end > begin, outside, 1.0)
-    miss_left, miss_right = np.zeros(len(left)), np.zeros(len(left))
-    miss_left[at_left], miss_right[at_right] = np.split(miss, [len(at_left)])
-    return Segments(left, right, miss_left, miss_right, ordered)
+        outside = piece.outside(piece.first + begin - 1, piece.first + end, ends)
+        miss = piece.weight * np.where(end > begin, outside, 1.0)
+        one, other = np.zeros(len(left)), np.zeros(len(left))
+        one[at_left], other[at_right] = np.split(miss, [len(at_left)])
+        miss_left, miss_right, worst = miss_left + one, miss_right + other, worst + np.maximum(one, other)
+    ordered = runs & (len(pieces) == 1)
+    return Segments(left, right, miss_left, miss_right, ordered, np.where(runs, worst, np.inf))
 
 
-def _run(piece: Piece, p: Array) -> tuple[NDArray[np.int64], NDArray[np.int64], Flags]:
+def covering_run(piece: Piece, p: Array) -> tuple[NDArray[np.int64], NDArray[np.int64], Flags]:
     """For each p the covering positions begin..end-1, and whether they are known to be a run.
 
     The limits' running maximum from the left and minimum from the right bracket every disorder: where both count the
@@ -117,27 +149,28 @@ def _prefix(limits: Array, p: Array, side: str) -> tuple[NDArray[np.int64], Flag
     return least, least == most
 
 
-def minimum(pieces: Sequence[Piece], low: float, high: float, chance: Chance = identity) -> Minimum:
+def minimum(pieces: Sequence[Piece], low: float, high: float) -> Minimum:
     """The infimum of coverage over [low, high], certified; `at` is the p where it is approached.
 
     Exact to rounding where the covering sets are runs of one binomial; elsewhere within 1e-10 by branch-and-bound.
     """
     if low == high:
-        return at_point(pieces, low, chance)
-    found = segments(pieces, low, high, chance, every_end=False)
-    best = _of_ordered(found)
-    if found.ordered.all():
+        return at_point(pieces, low)
+    found = segments(pieces, low, high, every_end=len(pieces) > 1)
+    best = _at_ends(found)
+    rest = ~found.ordered & (found.worst > best.miss + GAP)
+    if not rest.any():
         return best
-    rest = ~found.ordered
     runs = covering_runs(pieces, (found.left[rest] + found.right[rest]) / 2)
-    coverage, at = branch_and_bound(runs, found.left[rest], found.right[rest], chance, best.coverage)
+    coverage, at = branch_and_bound(runs, found.left[rest], found.right[rest], pieces[0].chance, best.coverage)
     return best if coverage >= best.coverage else Minimum(coverage, at, certified=True, miss=1.0 - coverage)
 
 
-def _of_ordered(found: Segments) -> Minimum:
-    """The largest miss at an end of a segment whose covering set is a run."""
-    left = np.where(found.ordered, found.miss_left, -1.0)
-    right = np.where(found.ordered, found.miss_right, -1.0)
+def _at_ends(found: Segments) -> Minimum:
+    """The largest miss at an end of a segment whose covering sets are runs."""
+    runs = np.isfinite(found.worst)
+    left = np.where(runs, found.miss_left, -1.0)
+    right = np.where(runs, found.miss_right, -1.0)
     i, j = int(np.argmax(left)), int(np.argmax(right))
     miss, at = (left[i], found.left[i]) if left[i] >= right[j] else (right[j], found.right[j])
     if miss < 0:
@@ -145,24 +178,23 @@ def _of_ordered(found: Segments) -> Minimum:
     return Minimum(coverage=1.0 - float(miss), at=float(at), certified=True, miss=float(miss))
 
 
-def at_point(pieces: Sequence[Piece], p: float, chance: Chance = identity) -> Minimum:
+def at_point(pieces: Sequence[Piece], p: float) -> Minimum:
     """Coverage at one p, as the minimum of a range that is a single proportion."""
     miss = 0.0
-    at = chance(np.array([p]))
     for piece in pieces:
         positions = np.arange(len(piece.lower)) + piece.first
         covers = (piece.lower <= p) & (p <= piece.upper)
         first, last = _ends_of_runs(covers)
-        miss += piece.weight * _outside(positions[first], positions[last], piece.trials, at)
+        miss += piece.weight * _outside(piece, positions[first], positions[last], np.array([p]))
     return Minimum(coverage=1.0 - miss, at=p, certified=True, miss=miss)
 
 
-def _outside(first: NDArray[np.int64], last: NDArray[np.int64], n: int, p: Array) -> float:
+def _outside(piece: Piece, first: NDArray[np.int64], last: NDArray[np.int64], p: Array) -> float:
     """P(X in none of the runs first..last): what lies before, between and after them."""
     if len(first) == 0:
         return 1.0
-    between = at_least(last[:-1] + 1, n, p) - at_least(first[1:], n, p)
-    return float((at_most(first[0] - 1, n, p) + at_least(last[-1] + 1, n, p)).item() + between.sum())
+    between = piece.at_least(last[:-1] + 1, p) - piece.at_least(first[1:], p)
+    return float(piece.outside(first[0] - 1, last[-1] + 1, p).item() + between.sum())
 
 
 def _ends_of_runs(covers: Flags) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
