@@ -16,6 +16,7 @@ from coverage_lab.probability import point
 from coverage_lab.records import Array
 
 _NEGLIGIBLE = 1e-18  # of a sum, relative
+_AT_A_TIME = 16
 
 
 def finite_point(x: ArrayLike, n: ArrayLike, population: ArrayLike, marked: ArrayLike) -> Array:
@@ -61,17 +62,19 @@ def finite_at_least(x: int, n: int, population: int, marked: int) -> float:
 
 
 def _outward(x: Array, n: Array, population: Array, marked: Array) -> Array:
-    """P(X <= x) added from x down, for x below the mean; finished elements drop out of the loop."""
+    """P(X <= x) added from x down, for x below the mean, some terms at a time; finished elements drop out."""
     cases = np.stack([values.ravel() for values in (np.minimum(x, np.minimum(n, marked)), n, population, marked)])
     term = finite_point(*cases)
     total = term.copy()
     active = np.flatnonzero(term > 0)
     cases, term = cases[:, active], term[active]
     while active.size:
-        k, s, size, m = cases
-        term = term * (k * (size - m - s + k)) / ((m - k + 1) * (s - k + 1))
-        total[active] += term
-        going = term > _NEGLIGIBLE * total[active]
-        active, term, cases = active[going], term[going], cases[:, going]
-        cases[0] -= 1
+        k, s, size, m = cases[:, :, None]
+        k = k - np.arange(_AT_A_TIME)
+        falls = (k * (size - m - s + k)) / ((m - k + 1) * (s - k + 1))  # 0 at the smallest possible count
+        terms = term[:, None] * np.cumprod(falls, axis=1)
+        total[active] += terms.sum(axis=1)
+        going = terms[:, -1] > _NEGLIGIBLE * total[active]
+        active, term, cases = active[going], terms[going, -1], cases[:, going]
+        cases[0] -= _AT_A_TIME
     return total.reshape(x.shape)

@@ -1,6 +1,7 @@
 """The order of a measurement: list cells, draw, measure every n, look at the neighbours of n, compare the routes."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from pathlib import Path
 
 import pandas as pd
@@ -12,7 +13,8 @@ from coverage_lab.engine.exact import figures, listed
 from coverage_lab.engine.means import Range
 from coverage_lab.engine.measures import MEASURES
 from coverage_lab.engine.size import Support, Table
-from coverage_lab.records import Measurements, Method, Outcomes, Plan
+from coverage_lab.engine.tally import restricted
+from coverage_lab.records import Design, Measurements, Method, Outcomes, Plan
 
 NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
 ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
@@ -39,11 +41,14 @@ def measure(
     fits: list[tuple[float, int]] = []
     for k, n in enumerate(plan.sizes):
         cells = [cell for cell in listed_cells if cell.n == n]
-        found = size.support(plan, n, cells, tallies)
-        for block in size.method_blocks(applying(plan, n), found.size):
-            for table, rows in zip(tables, size.measure_block(plan, n, found, block), strict=True):
-                table.append(rows)
-        fits += _fits(found)
+        of_view: dict[int, list[tuple[float, int]]] = {}
+        for seen, methods in views(plan, applying(plan, n)):
+            found = size.support(seen, n, cells, projected(tallies, seen.design.columns))
+            for block in size.method_blocks(methods, found.size):
+                for table, rows in zip(tables, size.measure_block(seen, n, found, block), strict=True):
+                    table.append(rows)
+            of_view[len(seen.design.columns)] = _fits(found)
+        fits += next((found for _, found in sorted(of_view.items(), reverse=True) if found), [])
         if progress is not None:
             progress("measuring", (k + 1) / len(plan.sizes))
     cells_frame, curve = _frame(tables[1]), _frame(tables[2])
@@ -56,6 +61,19 @@ def applying(plan: Plan, n: int) -> list[Method]:
     return [m for m in plan.methods if inapplicable(m, plan.design.columns, n, plan.side) is None]
 
 
+def views(plan: Plan, methods: Sequence[Method]) -> list[tuple[Plan, list[Method]]]:
+    """The plan with its design as each group of methods needs to see it: fewer columns may be known more exactly."""
+    groups: dict[Design, list[Method]] = {}
+    for method in methods:
+        groups.setdefault(plan.design.view(frozenset(method.needs)), []).append(method)
+    return [(replace(plan, design=design), group) for design, group in groups.items()]
+
+
+def projected(tallies: Mapping[work.Cell, Outcomes], columns: Sequence[str]) -> dict[work.Cell, Outcomes]:
+    """The same draws, told apart by these columns only."""
+    return {cell: restricted(outcomes, columns) for cell, outcomes in tallies.items()}
+
+
 def steady(plan: Plan) -> pd.DataFrame:
     """What the standard is judged by at n-3 … n+3, for every planned n: exact, or no rows.
 
@@ -65,12 +83,16 @@ def steady(plan: Plan) -> pd.DataFrame:
     over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
     for planned in plan.sizes if "enumerated" in plan.simulation.routes else ():
         for n in range(max(1, planned - NEIGHBOURS), planned + NEIGHBOURS + 1):
-            methods = [m for m in applying(plan, n) if m in plan.prefer or planned <= ALL_STEADY_UP_TO]
-            parts = listed(plan.design, methods, n, (over.low, over.high), plan.side, plan.tail) if methods else []
-            found = figures(parts, over, plan.side) if parts else []
-            rows += [
-                {"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=False)
-            ]
+            for seen, group in views(plan, applying(plan, n)):
+                quick = planned <= ALL_STEADY_UP_TO and len(size.manageable(seen.design, n, over.low, over.high)) == 1
+                methods = [method for method in group if quick or method in plan.prefer]
+                if not methods or not size.manageable(seen.design, n, over.low, over.high):
+                    continue
+                parts = listed(seen.design, methods, n, (over.low, over.high), plan.side, plan.tail)
+                found = figures(parts, over, plan.side)
+                rows += [
+                    {"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=True)
+                ]
     return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss", "mean_width"])
 
 

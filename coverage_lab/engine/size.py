@@ -6,16 +6,20 @@ from typing import Any
 
 import numpy as np
 
+from coverage_lab.engine import search
 from coverage_lab.engine.bounds import evaluate
 from coverage_lab.engine.exact import Listed, figures, minimum_of, possible
 from coverage_lab.engine.means import Range
 from coverage_lab.engine.measures import ERRORS, MEASURES, Stack, measure, stack
+from coverage_lab.engine.search import grid_size
 from coverage_lab.engine.tally import union
 from coverage_lab.engine.work import Cell
 from coverage_lab.records import Columns, Counts, Design, Method, Outcomes, Part, Plan, Route
 
 CURVE_POINTS = 401
 EVERYWHERE_UP_TO = 5000  # beyond this n the minimum over all of (0, 1) costs more than the rest of the audit
+EVERYWHERE_WORK = 200_000  # parts times their samples: beyond, the same holds of a mixture
+LARGEST_MIXTURE = 500_000  # parts times their samples: beyond, a mixture's minimum is searched
 BLOCK_BYTES = 1 << 26
 
 Table = dict[str, list[Any]]
@@ -48,10 +52,15 @@ class Support:
 
 
 def curve_points(low: float, high: float, design: Design, n: int) -> list[float]:
-    """Evenly spaced truths over the planned range and a quarter of its width on either side, settled."""
+    """Evenly spaced truths over the planned range and a quarter of its width on either side, settled.
+
+    Fewer where every truth has a long list of samples.
+    """
     margin = (high - low) / 4 or min(low, 1 - low) / 2
     ends = max(low - margin, 0.0), min(high + margin, 1.0)
-    return list(dict.fromkeys(design.settle(float(p), n)[0] for p in np.linspace(*ends, CURVE_POINTS)))
+    law = design.law(design.settle((low + high) / 2, n)[0], n)
+    count = CURVE_POINTS if law is None else min(CURVE_POINTS, grid_size(len(law.weight)))
+    return list(dict.fromkeys(design.settle(float(p), n)[0] for p in np.linspace(*ends, count)))
 
 
 def support(plan: Plan, n: int, cells: Sequence[Cell], tallies: Mapping[Cell, Outcomes]) -> Support:
@@ -64,12 +73,13 @@ def support(plan: Plan, n: int, cells: Sequence[Cell], tallies: Mapping[Cell, Ou
         lawful = [(c.p, "enumerated", law) for c in cells if (law := plan.design.law(c.p, n)) is not None]
         points = curve_points(low, high, plan.design, n)
         curve = [(p, "enumerated", law) for p in points if (law := plan.design.law(p, n)) is not None]
-        parts = plan.design.parts(n) or ()
+        parts = manageable(plan.design, n, low, high)
     drawn: list[tuple[float, Route, Outcomes]] = [(c.p, "simulated", tallies[c]) for c in cells if c in tallies]
     planned = [(part, possible(part, low, high)) for part in parts]
-    everywhere = [(part, np.arange(part.trials + 1)) for part in parts if n <= EVERYWHERE_UP_TO]
+    whole = n <= EVERYWHERE_UP_TO and len(parts) * sum(part.trials for part in parts) <= EVERYWHERE_WORK
+    everywhere = [(part, np.arange(part.trials + 1)) for part in parts if whole]
     lists = [outcomes.columns for _, _, outcomes in (*lawful, *drawn, *curve)]
-    lists += [{"events": events, "trials": np.array([part.trials])} for part, events in (*planned, *everywhere)]
+    lists += [part.columns(events) for part, events in (*planned, *everywhere)]
     columns, places = union(lists)
     place = iter(places)
     return Support(
@@ -79,6 +89,13 @@ def support(plan: Plan, n: int, cells: Sequence[Cell], tallies: Mapping[Cell, Ou
         [(*item, next(place)) for item in planned],
         [(*item, next(place)) for item in everywhere],
     )
+
+
+def manageable(design: Design, n: int, low: float, high: float) -> tuple[Part, ...]:
+    """The design's parts at n, unless their end points over the range are too many to be looked at; none then."""
+    parts = design.parts(n) or ()
+    samples = sum(len(possible(part, low, high)) for part in parts)
+    return parts if len(parts) * samples <= LARGEST_MIXTURE else ()
 
 
 def method_blocks(methods: Sequence[Method], samples: int) -> Iterator[Sequence[Method]]:
@@ -94,7 +111,7 @@ def measure_block(plan: Plan, n: int, found: Support, methods: Sequence[Method])
     names = [method.name for method in methods]
     cells = _cell_rows(n, names, found.cells, limits, plan)
     curve = _cell_rows(n, names, found.curve, limits, plan)
-    exact = _method_rows(plan, n, names, found, limits)
+    exact = _method_rows(plan, n, methods, found, limits)
     rows = {**_simulated_summary(cells, names), **exact}
     return rows, cells, {key: curve[key] for key in ("n", "p", "method", "coverage", "mean_width") if key in curve}
 
@@ -114,22 +131,34 @@ def _cell_rows(n: int, names: list[str], weighed: Sequence[Weighed], limits: Sta
     return table
 
 
-def _method_rows(plan: Plan, n: int, names: list[str], found: Support, limits: Stack) -> Table:
-    """What is known exactly over the planned range and everywhere."""
-    table: Table = {"n": [n] * len(names), "method": list(names)}
-    if found.planned:
-        over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
-        parts = [Listed(part, events, limits.at(place)) for part, events, place in found.planned]
-        rows = figures(parts, over, plan.side)
-        for column in rows[0]:
-            table[column] = [row[column] for row in rows]
-        table["minimum_is"] = ["certified"] * len(names)
+def _method_rows(plan: Plan, n: int, methods: Sequence[Method], found: Support, limits: Stack) -> Table:
+    """What is known exactly, or by a search, over the planned range and everywhere."""
+    names = [method.name for method in methods]
+    table: Table = {"n": [n] * len(names), "method": names}
+    rows, kind = _over_range(plan, n, methods, found, limits)
+    if rows:
+        table |= {column: [row[column] for row in rows] for column in rows[0]}
+        table["minimum_is"] = [kind] * len(names)
     if found.everywhere:
         parts = [Listed(part, events, limits.at(place)) for part, events, place in found.everywhere]
         least = [minimum_of(parts, k, 0.0, 1.0) for k in range(len(names))]
         table["everywhere_minimum_coverage"] = [item.coverage for item in least]
         table["everywhere_minimum_at"] = [item.at for item in least]
     return table
+
+
+def _over_range(
+    plan: Plan, n: int, methods: Sequence[Method], found: Support, limits: Stack
+) -> tuple[Sequence[dict[str, float]], str]:
+    """Every method's figures over the planned range and what they are; no rows where only simulation is left."""
+    over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
+    if found.planned:
+        parts = [Listed(part, events, limits.at(place)) for part, events, place in found.planned]
+        return figures(parts, over, plan.side), "certified"
+    if "enumerated" not in plan.simulation.routes:
+        return (), ""
+    searched = search.figures(plan.design, methods, n, over, plan.side, plan.tail)
+    return (searched[0], "certified" if searched[1] else "searched") if searched else ((), "")
 
 
 def _simulated_summary(cells: Table, names: list[str]) -> Table:

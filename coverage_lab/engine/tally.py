@@ -144,6 +144,17 @@ def simulated(columns: Columns, counts: Counts) -> Outcomes:
     return Outcomes(columns, counts / draws, draws)
 
 
+def restricted(outcomes: Outcomes, columns: Sequence[str]) -> Outcomes:
+    """A simulation's outcomes told apart by some of their columns only."""
+    if outcomes.draws is None or set(columns) >= set(outcomes.columns):
+        return outcomes
+    counts = np.rint(outcomes.weight * outcomes.draws)
+    kept = {name: outcomes.columns[name] for name in columns}
+    if all(len(values) == 1 for values in kept.values()):
+        return Outcomes(kept, np.ones(1), outcomes.draws)
+    return simulated(*tally(kept, counts.astype(np.int64)))
+
+
 def joined(samples: Sequence[Columns]) -> Columns:
     """Several lists of samples as one; a column that is the same everywhere becomes a constant."""
     sizes = [max(len(values) for values in columns.values()) for columns in samples]

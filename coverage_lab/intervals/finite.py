@@ -11,7 +11,7 @@ from coverage_lab.intervals.exact import clopper_pearson, mid_p
 from coverage_lab.intervals.inputs import floats, normal_point, pair
 from coverage_lab.intervals.score import wilson_at
 from coverage_lab.intervals.sources import COCHRAN
-from coverage_lab.probability_finite import finite_above
+from coverage_lab.probability_finite import finite_above, finite_point
 from coverage_lab.records import Array, Bounds, Method
 
 _TIE = 1e-11  # probabilities this close, relatively, are equal
@@ -51,8 +51,8 @@ def _tail_chance(x: Array, n: Array, size: Array, marked: Array) -> Array:
 
 
 def _half_tail_chance(x: Array, n: Array, size: Array, marked: Array) -> Array:
-    """P(X > x) and half of P(X = x), that is half of P(X >= x) and half of P(X >= x + 1)."""
-    return (finite_above(x, n, size, marked) + finite_above(x + 1, n, size, marked)) / 2
+    """P(X > x) and half of P(X = x)."""
+    return finite_above(x + 1, n, size, marked) + finite_point(x, n, size, marked) / 2
 
 
 def _inverted(
