@@ -1,12 +1,16 @@
 """The certified minimum over finitely many truths: those that a finite population can have."""
 
 from collections.abc import Sequence
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
 from coverage_lab.engine.minimum import Piece, at_point, covering_run
+from coverage_lab.probability_finite import finite_point
 from coverage_lab.records import Array, Counts, Minimum
+
+_TABLE = 100_000  # cells of a table of tails: kept for the other methods, below a hundred of them take 160 MB
 
 Places = tuple[Counts, Counts, NDArray[np.bool_]]
 
@@ -48,6 +52,29 @@ def _missed(pieces: Sequence[Piece], places: Sequence[Places], points: Array, at
     """Weighted miss rates of the pieces at some of the points, array (pieces, points)."""
     rates = np.empty((len(pieces), len(at)))
     for k, (piece, (begin, end, _)) in enumerate(zip(pieces, places, strict=True)):
-        outside = piece.outside(piece.first + begin[at] - 1, piece.first + end[at], points[at])
+        outside = _outside(piece, begin[at], end[at], points, at)
         rates[k] = piece.weight * np.where(end[at] > begin[at], outside, 1.0)
     return rates
+
+
+def _outside(piece: Piece, begin: Counts, end: Counts, points: Array, at: Counts) -> Array:
+    """P(X in none of the positions begin..end-1) at some of the points, from tables while these are small."""
+    if piece.population is None or len(points) * len(piece.lower) > _TABLE:
+        return piece.outside(piece.first + begin - 1, piece.first + end, points[at])
+    marks = np.rint(points[[0, -1]] * piece.population).astype(int).tolist()
+    below, above = _tails(piece.trials, piece.population, (piece.first, len(piece.lower)), (marks[0], len(points)))
+    return np.asarray(below[at, begin] + above[at, end])
+
+
+@lru_cache(maxsize=128)
+def _tails(trials: int, population: int, events: tuple[int, int], marks: tuple[int, int]) -> tuple[Array, Array]:
+    """P(X < x) and P(X >= x), arrays (marks, events + 1), each summed from its own small end.
+
+    events, marks: the first, and how many in a row; what lies beyond the events is too rare to matter.
+    """
+    x, m = (first + np.arange(count) for first, count in (events, marks))
+    chance = finite_point(x[None, :], trials, population, m[:, None])
+    none = np.zeros((len(m), 1))
+    below = np.concatenate([none, np.cumsum(chance, axis=1)], axis=1)
+    above = np.concatenate([none, np.cumsum(chance[:, ::-1], axis=1)], axis=1)[:, ::-1]
+    return below, above

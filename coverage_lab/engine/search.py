@@ -17,8 +17,8 @@ from coverage_lab.engine.measures import MEASURES, Stack, measure, stack
 from coverage_lab.engine.tally import union
 from coverage_lab.records import Array, Columns, Counts, Design, Limits, Method, Outcomes, Side
 
-SAMPLES = 2_000_000  # listed in one search, all truths together: it sets how dense the grid is
-FEWEST, MOST = 25, 401  # truths on the grid
+SAMPLES = 1_000_000  # listed in one search, all truths together: it sets how dense the grid is
+FEWEST, MOST = 25, 201  # truths on the grid
 EVERY = 20_000  # truths up to which every one is looked at
 _ASIDE = 1e-12  # relative step to either side of an end point
 _ROUNDS, _ZOOM = 3, 9
@@ -127,7 +127,7 @@ def _truths(asked: Question, size: int) -> tuple[Array, bool]:
     points = asked.design.points(over.low, over.high, asked.n)
     if points is None:
         return np.unique(np.linspace(over.low, over.high, grid_size(size))), over.low == over.high
-    if len(points) <= EVERY and len(points) * size <= 4 * SAMPLES:
+    if len(points) <= EVERY and len(points) * size <= 8 * SAMPLES:
         return points, True
     return thinned(points, grid_size(size)), False
 
@@ -171,7 +171,7 @@ def _refined(asked: Question, known: Known, method: Method, k: int, worst: Worst
 
     All end points when they are few, else those next to the worst place so far.
     """
-    budget = int(np.clip(SAMPLES // (8 * known.size), 8, MOST))
+    budget = int(np.clip(SAMPLES // (4 * known.size), 8, MOST))
     ends = np.unique(np.concatenate([known.limits[k].lower, known.limits[k].upper]))
     ends = ends[(ends > asked.over.low) & (ends < asked.over.high)]
     if len(ends) > budget:
