@@ -44,10 +44,8 @@ def look(check: Check, start: int, top: int, events: Callable[[int], float]) -> 
     """First and safe n in start … top, among those looked at, which `checked` states.
 
     Sizes spread from the bracket's place to four times it must all meet the target; then every n of a neighbourhood is
-    looked at, which grows until it holds a failing n (or `start`) and safe ones after it.
-
-    Args:
-        events: about how many events one n brings, which bounds the neighbourhood.
+    looked at, which grows until it holds a failing n (or `start`) and safe ones after it. `events` says about how many
+    events one n brings, which bounds the neighbourhood.
     """
     place = bracket(check, start, top)
     spread = np.array([], dtype=np.int64)
