@@ -17,12 +17,13 @@ from coverage_lab.engine.minimum import identity
 from coverage_lab.probability import at_least, at_most, likely, point
 from coverage_lab.records import Array, Counts, Decision, Method, Side
 from coverage_lab.records_sizing import Decided, Found
-from coverage_lab.sizing.far import Flags, first_and_safe, look
+from coverage_lab.sizing.far import Flags, Terrain, first_and_safe, look
 
 TIES = 1e-12
 WHOLE_TABLE_UP_TO = 20_000
 FLOOR = 1e-18  # outcomes less likely than this under every p that matters are left out above that n
 
+HALVINGS = 25.0  # evaluations that one n takes, for the search beyond the exact scan
 METHOD_COLUMNS = ["method", "label", "critical", "worst_size", "power"]
 
 
@@ -83,7 +84,8 @@ def decide(decision: Decision, methods: Sequence[Method], horizon: int, top: int
     n = table["n"].to_numpy()
     found = Found(*first_and_safe(n, _enough(decision, table)), f"every n from 1 to {n[-1]} checked")
     if found.safe_n is None and top > n[-1]:
-        far = look(lambda some: _enough(decision, by_n(decision, some)), int(n[-1]) + 1, top, lambda _: 50.0)
+        terrain = Terrain(min(decision.goal, 1 - decision.goal), lambda _: HALVINGS)
+        far = look(lambda some: _enough(decision, by_n(decision, some)), int(n[-1]) + 1, top, terrain)
         found = Found(found.first_n or far.first_n, far.safe_n, f"{found.checked}; {far.checked}")
     if found.safe_n is None:
         return Decided(claim(decision), found, None, None, None, None, pd.DataFrame(columns=METHOD_COLUMNS), table)

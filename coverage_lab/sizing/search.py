@@ -14,10 +14,10 @@ import pandas as pd
 from coverage_lab.engine.work import Progress
 from coverage_lab.records import Plan
 from coverage_lab.records_sizing import TARGETS, Found
-from coverage_lab.sizing.far import Check, Flags, bracket, first_and_safe, look
+from coverage_lab.sizing.far import Check, Flags, Terrain, bracket, first_and_safe, look
 from coverage_lab.sizing.scan import COVERAGE_COLUMNS, Scanned, asked, cost, scan
 from coverage_lab.sizing.widths import TIES
-from coverage_lab.verdict import thresholds
+from coverage_lab.verdict import ROUNDING, thresholds
 
 EXACT_UP_TO = 20_000
 SHORTEST_HORIZON = 2_000
@@ -48,7 +48,8 @@ class Targets:
         if name == "assurance" and self.assurance is not None:
             return (figures["assurance"] >= self.assurance * (1 - TIES)).to_numpy(dtype=bool)
         worst, mean = self.coverage or (0.0, 0.0)
-        return ((figures["worst_miss"] <= worst) & (figures["mean_miss"] <= mean)).to_numpy(dtype=bool)
+        slack = figures["n"] * ROUNDING
+        return ((figures["worst_miss"] <= worst + slack) & (figures["mean_miss"] <= mean + slack)).to_numpy(dtype=bool)
 
 
 @dataclass(frozen=True)
@@ -158,7 +159,10 @@ def _farther(plan: Plan, item: Scanned, targets: Targets, horizon: int, found: B
 
 def _look(plan: Plan, item: Scanned, targets: Targets, name: str, start: int, top: int) -> Found:
     """One target beyond the exact scan."""
-    return look(_check(plan, item, targets, name), start, top, lambda n: float(cost(asked(plan), np.array([n]))[0]))
+    question = replace(asked(plan), columns=NEEDED[name])
+    p = question.expected if name == "assurance" else min(question.low, 1 - question.high)
+    terrain = Terrain(p, lambda n: float(cost(question, np.array([n]))[0]))
+    return look(_check(plan, item, targets, name), start, top, terrain)
 
 
 def _together(known: Found | None, answer: Found, start: int) -> Found:

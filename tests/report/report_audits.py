@@ -79,7 +79,7 @@ def finished(name: str) -> Audit:
 class Tree(HTMLParser):
     """A page as a list of (tag, attributes, enclosing tags) and the text inside each element."""
 
-    VOID = {"meta", "img", "br", "hr", "input", "link", "line", "circle"}
+    VOID = frozenset({"meta", "img", "br", "hr", "input", "link", "line", "circle"})
 
     def __init__(self, text: str) -> None:
         super().__init__(convert_charrefs=True)

@@ -2,6 +2,7 @@
 
 import json
 from collections.abc import Callable
+from functools import cache
 from itertools import combinations, pairwise
 from pathlib import Path
 
@@ -13,9 +14,9 @@ from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from matplotlib.text import Annotation, Text
 
-from coverage_lab.report import Saved, figures, figures_coverage, load
+from coverage_lab.report import figures, figures_coverage, load
 from coverage_lab.report.captions import Words
-from coverage_lab.report.page import PICTURES, images
+from coverage_lab.report.page import PICTURES, Picture, images
 from coverage_lab.report.style import (
     LOOKS,
     MOST_EMPHASISED,
@@ -33,15 +34,23 @@ from coverage_lab.report.style import (
 )
 
 Report = Callable[[str], Path]
+Drawn = Callable[[str, Picture], Figure]
+SHOWN = ["two-sided", "several", "upper", "simulated", "hostile"]
 ALPHAS = [0.2, 0.05, 0.01, 1e-5]
 
 
-def drawn(draw: Callable[[Saved], Figure], saved: Saved) -> Figure:
-    """The figure, laid out."""
-    with house_style():
-        figure = draw(saved)
-        FigureCanvasAgg(figure).draw()
-    return figure
+@pytest.fixture(scope="module")
+def drawn(report: Report) -> Callable[[str, Picture], Figure]:
+    """The figure of a plan's report, laid out once."""
+
+    @cache
+    def found(name: str, picture: Picture) -> Figure:
+        with house_style():
+            figure = picture.draw(load(report(name)))
+            FigureCanvasAgg(figure).draw()
+        return figure
+
+    return found
 
 
 def words_of(figure: Figure) -> str:
@@ -50,16 +59,16 @@ def words_of(figure: Figure) -> str:
 
 
 @pytest.mark.parametrize("picture", PICTURES, ids=lambda picture: picture.name)
-@pytest.mark.parametrize("name", ["two-sided", "several", "upper", "none", "simulated", "enumerated", "hostile"])
-def test_a_figure_says_what_it_is_about(name: str, picture: object, report: Report) -> None:
+@pytest.mark.parametrize("name", SHOWN)
+def test_a_figure_says_what_it_is_about(name: str, picture: Picture, report: Report, drawn: Drawn) -> None:
     saved = load(report(name))
     if not picture.wanted(saved):
-        pytest.skip("not drawn for this plan")
-    said = words_of(drawn(picture.draw, saved))
-    document = saved.document
-    assert f"n = {document['verdict']['n'] if name != 'several' else 20}" in said
-    assert "95 % one-sided upper bound" in said if name == "upper" else "95 % two-sided interval" in said
-    assert "simulated" in said if name == "simulated" else "enumerated" in said
+        assert picture.file not in (report(name) / "report.html").read_text(encoding="utf-8")
+        return
+    said = words_of(drawn(name, picture))
+    assert f"n = {20 if name == 'several' else saved.document['verdict']['n']}" in said
+    assert ("95 % one-sided upper bound" if name == "upper" else "95 % two-sided interval") in said
+    assert ("simulated" if name == "simulated" else "enumerated") in said
     caption, alt = picture.words(saved)
     assert caption.endswith(".")
     assert alt.endswith(".")
@@ -101,32 +110,31 @@ def test_every_emphasised_colour_stands_out_on_white() -> None:
     assert min(contrast_on_white(colour) for colour, _, _ in LOOKS) >= 3 - 0.06
 
 
-@pytest.mark.parametrize("name", ["two-sided", "several", "upper", "none", "hostile"])
-def test_labels_at_the_lines_do_not_overlap(name: str, report: Report) -> None:
-    figure = drawn(figures_coverage.coverage, load(report(name)))
-    page = figure.bbox
+@pytest.mark.parametrize("name", SHOWN)
+def test_labels_at_the_lines_do_not_overlap(name: str, drawn: Drawn) -> None:
+    figure = drawn(name, PICTURES[0])
     for axes in figure.axes:
         labels = [item for item in axes.findobj(Annotation) if item.get_text()]
         assert len(labels) >= 3
         boxes = [Text.get_window_extent(item) for item in labels]
-        for one, other in combinations(boxes, 2):
-            assert not one.overlaps(other)
-        for box in boxes:
-            assert page.x0 <= box.x0
-            assert box.x1 <= page.x1
+        assert not [1 for one, other in combinations(boxes, 2) if one.overlaps(other)]
 
 
-@pytest.mark.parametrize("name", ["two-sided", "several", "upper", "hostile"])
-def test_no_text_leaves_the_image(name: str, report: Report) -> None:
-    saved = load(report(name))
-    for picture in PICTURES:
-        if picture.wanted(saved):
-            figure = drawn(picture.draw, saved)
-            for text in figure.findobj(Text):
-                if text.get_text() and text.get_visible() and not isinstance(text, Annotation):
-                    box = text.get_window_extent()
-                    assert box.x0 >= -1, f"{picture.name}: {text.get_text()!r}"
-                    assert box.x1 <= figure.bbox.x1 + 1, f"{picture.name}: {text.get_text()!r}"
+def test_labels_that_overlap_would_be_noticed(drawn: Drawn) -> None:
+    boxes = [Text.get_window_extent(item) for item in drawn("two-sided", PICTURES[0]).axes[0].findobj(Annotation)]
+    assert boxes[0].overlaps(boxes[0])
+
+
+@pytest.mark.parametrize("picture", PICTURES, ids=lambda picture: picture.name)
+@pytest.mark.parametrize("name", SHOWN)
+def test_nothing_leaves_the_image(name: str, picture: Picture, report: Report, drawn: Drawn) -> None:
+    if picture.wanted(load(report(name))):
+        figure = drawn(name, picture)
+        box, (width, height) = figure.get_tightbbox(), figure.get_size_inches()
+        assert box.x0 >= -0.01
+        assert box.y0 >= -0.01
+        assert box.x1 <= width + 0.01
+        assert box.y1 <= height + 0.01
 
 
 def test_the_same_figure_has_the_same_bytes(report: Report) -> None:
@@ -183,8 +191,8 @@ def test_the_coverage_axis_names_the_nominal_level_and_both_ends(alpha: float) -
     ("words", "shown"),
     [
         ("Wilson score", "Wilson score"),
-        ("cost $x_1$", r"cost \$x\_1\$".replace(r"\_", "_")),
-        ("rule 😀", "rule □"),
+        ("cost $x_1$", r"cost \$x_1\$"),
+        ("rule 漢", "rule □"),
         ("two\n lines", "two lines"),
         ("x" * 50, "x" * 35 + "…"),
     ],

@@ -13,9 +13,9 @@ from coverage_lab.designs import Simple
 from coverage_lab.engine.bounds import evaluate
 from coverage_lab.engine.exact import figures, listed
 from coverage_lab.intervals import CATALOGUE
-from coverage_lab.records import Method, tail_of
+from coverage_lab.records import Method, Precision, tail_of
 from coverage_lab.sizing.pool import Interrupted, run
-from coverage_lab.sizing.scan import Asked, scan, scanned
+from coverage_lab.sizing.scan import Asked, asked, scan, scanned
 from coverage_lab.sizing.search import first_and_safe
 
 SIZES = np.array([1, 2, 3, 7, 20, 41, 60, 118, 250, 251, 400])
@@ -26,9 +26,9 @@ def question(low, high, expected=None, *, half_width=0.05, confidence=0.95, side
     return Asked(low, high, prior, middle, half_width, side, tail_of(confidence, side))
 
 
-def engine_figures(method: Method, asked: Asked, n: int) -> dict[str, float]:
-    parts = listed(Simple(), [method], n, (asked.low, asked.high), asked.side, asked.tail)
-    return figures(parts, asked.over, asked.side)[0]
+def engine_figures(method: Method, asking: Asked, n: int) -> dict[str, float]:
+    parts = listed(Simple(), [method], n, (asking.low, asking.high), asking.side, asking.tail)
+    return figures(parts, asking.over, asking.side)[0]
 
 
 RANGES = [(0.005, 0.05), (0.01, 0.01), (0.3, 0.7), (0.9, 0.99), (0.0, 0.2), (0.5, 1.0), (1e-4, 1e-3)]
@@ -37,41 +37,41 @@ RANGES = [(0.005, 0.05), (0.01, 0.01), (0.3, 0.7), (0.9, 0.99), (0.0, 0.2), (0.5
 @pytest.mark.parametrize(("low", "high"), RANGES)
 @pytest.mark.parametrize("name", ["wilson", "clopper-pearson", "jeffreys", "wald", "logit", "arcsine", "uniform-bayes"])
 def test_equals_the_engine(name: str, low: float, high: float) -> None:
-    asked = question(low, high)
-    found = scan(asked, [scanned(CATALOGUE[name], coverage=True)], SIZES).set_index("n")
+    asking = question(low, high)
+    found = scan(asking, [scanned(CATALOGUE[name], coverage=True)], SIZES).set_index("n")
     for n in SIZES:
-        wanted = engine_figures(CATALOGUE[name], asked, int(n))
+        wanted = engine_figures(CATALOGUE[name], asking, int(n))
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-11, abs=1e-15)
         assert found.loc[n, "mean_miss"] == pytest.approx(wanted["mean_miss"], rel=1e-9, abs=1e-14)
 
 
 @pytest.mark.parametrize("name", ["blaker", "sterne", "mid-p", "shortest-exact", "jeffreys-hpd"])
 def test_equals_the_engine_for_tables_with_shared_end_points(name: str) -> None:
-    asked = question(0.02, 0.4)
+    asking = question(0.02, 0.4)
     sizes = np.array([5, 17, 31, 60])
-    found = scan(asked, [scanned(CATALOGUE[name], coverage=True)], sizes).set_index("n")
+    found = scan(asking, [scanned(CATALOGUE[name], coverage=True)], sizes).set_index("n")
     for n in sizes:
-        wanted = engine_figures(CATALOGUE[name], asked, int(n))
+        wanted = engine_figures(CATALOGUE[name], asking, int(n))
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-10)
 
 
 @pytest.mark.parametrize("confidence", [0.8, 0.99, 0.9999])
 @pytest.mark.parametrize("name", ["logit", "logit-half", "cloglog", "wilson"])
 def test_limits_that_turn_back_are_left_to_the_engine(name: str, confidence: float) -> None:
-    asked = question(0.02, 0.3, confidence=confidence)
-    found = scan(asked, [scanned(CATALOGUE[name], coverage=True)], SIZES).set_index("n")
+    asking = question(0.02, 0.3, confidence=confidence)
+    found = scan(asking, [scanned(CATALOGUE[name], coverage=True)], SIZES).set_index("n")
     for n in SIZES:
-        wanted = engine_figures(CATALOGUE[name], asked, int(n))
+        wanted = engine_figures(CATALOGUE[name], asking, int(n))
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-10, abs=1e-15)
 
 
 @pytest.mark.parametrize("side", ["upper", "lower"])
 @pytest.mark.parametrize("name", ["clopper-pearson", "second-order", "wilson"])
 def test_one_sided_bounds_equal_the_engine(name: str, side: str) -> None:
-    asked = question(0.01, 0.1, side=side, prior=(2.0, 30.0))
-    found = scan(asked, [scanned(CATALOGUE[name], coverage=True)], SIZES).set_index("n")
+    asking = question(0.01, 0.1, side=side, prior=(2.0, 30.0))
+    found = scan(asking, [scanned(CATALOGUE[name], coverage=True)], SIZES).set_index("n")
     for n in SIZES:
-        wanted = engine_figures(CATALOGUE[name], asked, int(n))
+        wanted = engine_figures(CATALOGUE[name], asking, int(n))
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-11, abs=1e-15)
         assert found.loc[n, "mean_miss"] == pytest.approx(wanted["mean_miss"], rel=1e-9, abs=1e-14)
 
@@ -84,12 +84,12 @@ def gap_rule(events, trials, tail):
 
 def test_a_rule_of_ones_own_is_not_taken_to_be_ordered() -> None:
     own = Method("gap", gap_rule, "gap", "own", "test")
-    asked = question(0.02, 0.55)
+    asking = question(0.02, 0.55)
     item = scanned(own, coverage=True)
     assert not item.steady
-    found = scan(asked, [item], SIZES[2:]).set_index("n")
+    found = scan(asking, [item], SIZES[2:]).set_index("n")
     for n in SIZES[2:]:
-        wanted = engine_figures(own, asked, int(n))
+        wanted = engine_figures(own, asking, int(n))
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-9)
 
 
@@ -102,61 +102,61 @@ def test_a_rule_of_ones_own_is_not_taken_to_be_ordered() -> None:
 )
 def test_any_range_equals_the_engine(ends, start, name, confidence) -> None:
     low, high = min(ends), max(ends)
-    asked = question(low, high, confidence=confidence)
+    asking = question(low, high, confidence=confidence)
     sizes = np.array([start, start + 1, start + 17])
-    found = scan(asked, [scanned(CATALOGUE[name], coverage=True)], sizes)
+    found = scan(asking, [scanned(CATALOGUE[name], coverage=True)], sizes)
     for n, miss in zip(sizes, found["worst_miss"], strict=True):
-        wanted = engine_figures(CATALOGUE[name], asked, int(n))["worst_miss"]
+        wanted = engine_figures(CATALOGUE[name], asking, int(n))["worst_miss"]
         assert miss == pytest.approx(wanted, rel=1e-9, abs=1e-14)
 
 
-def grid_half_width(name: str, n: int, asked: Asked, points: int = 2001) -> float:
+def grid_half_width(name: str, n: int, asking: Asked, points: int = 2001) -> float:
     """The largest expected half-width on a fine grid, by scipy's binomial distribution."""
     x = np.arange(n + 1)
-    limits = evaluate(CATALOGUE[name], {"events": x, "trials": np.array([n])}, asked.side, asked.tail)
-    p = np.linspace(asked.low, asked.high, points)[:, None]
+    limits = evaluate(CATALOGUE[name], {"events": x, "trials": np.array([n])}, asking.side, asking.tail)
+    p = np.linspace(asking.low, asking.high, points)[:, None]
     spread = {
         "two-sided": (limits.upper - limits.lower) / 2 + 0 * p,
         "upper": limits.upper - p,
         "lower": p - limits.lower,
-    }[asked.side]
+    }[asking.side]
     return float((stats.binom.pmf(x, n, p) * spread).sum(axis=1).max())
 
 
 @pytest.mark.parametrize(("low", "high"), [(0.005, 0.05), (0.3, 0.7), (0.4, 0.9), (0.85, 0.99), (0.02, 0.98)])
 @pytest.mark.parametrize("name", ["wilson", "clopper-pearson", "wald", "cloglog", "poisson-exact", "blaker"])
 def test_expected_half_width_is_the_largest_of_the_range(name: str, low: float, high: float) -> None:
-    asked = question(low, high)
+    asking = question(low, high)
     sizes = np.array([3, 25, 60])
-    found = scan(asked, [scanned(CATALOGUE[name], coverage=False)], sizes)
+    found = scan(asking, [scanned(CATALOGUE[name], coverage=False)], sizes)
     for n, came in zip(sizes, found["half_width"], strict=True):
-        assert came == pytest.approx(grid_half_width(name, int(n), asked), rel=2e-6)
+        assert came == pytest.approx(grid_half_width(name, int(n), asking), rel=2e-6)
 
 
 @pytest.mark.parametrize("side", ["upper", "lower"])
 def test_expected_excess_of_a_bound(side: str) -> None:
-    asked = question(0.02, 0.3, side=side)
-    found = scan(asked, [scanned(CATALOGUE["clopper-pearson"], coverage=False)], np.array([10, 80]))
+    asking = question(0.02, 0.3, side=side)
+    found = scan(asking, [scanned(CATALOGUE["clopper-pearson"], coverage=False)], np.array([10, 80]))
     for n, came in zip((10, 80), found["half_width"], strict=True):
-        assert came == pytest.approx(grid_half_width("clopper-pearson", n, asked), rel=2e-6)
+        assert came == pytest.approx(grid_half_width("clopper-pearson", n, asking), rel=2e-6)
 
 
 @pytest.mark.parametrize("side", ["two-sided", "upper", "lower"])
 @pytest.mark.parametrize("p", [1e-3, 0.1, 0.5, 0.93])
 def test_assurance_against_a_general_library(side: str, p: float) -> None:
-    asked = question(p, p, side=side)
-    found = scan(asked, [scanned(CATALOGUE["wilson"], coverage=False)], SIZES)
+    asking = question(p, p, side=side)
+    found = scan(asking, [scanned(CATALOGUE["wilson"], coverage=False)], SIZES)
     for n, came in zip(SIZES, found["assurance"], strict=True):
         x = np.arange(n + 1)
-        limits = evaluate(CATALOGUE["wilson"], {"events": x, "trials": np.array([n])}, side, asked.tail)
+        limits = evaluate(CATALOGUE["wilson"], {"events": x, "trials": np.array([n])}, side, asking.tail)
         spread = {"two-sided": (limits.upper - limits.lower) / 2, "upper": limits.upper - p, "lower": p - limits.lower}
         wanted = stats.binom.pmf(x, n, p)[spread[side] <= 0.05].sum()
         assert came == pytest.approx(wanted, abs=1e-12)
 
 
 def test_only_what_is_asked_for_is_computed() -> None:
-    asked = replace(question(0.01, 0.05), columns=("assurance",))
-    found = scan(asked, [scanned(CATALOGUE["wilson"], coverage=False)], SIZES)
+    asking = replace(question(0.01, 0.05), columns=("assurance",))
+    found = scan(asking, [scanned(CATALOGUE["wilson"], coverage=False)], SIZES)
     assert found[["worst_miss", "mean_miss", "half_width"]].isna().all().all()
     assert found["assurance"].notna().all()
 
@@ -183,7 +183,8 @@ def test_the_number_of_workers_changes_no_digit(monkeypatch: pytest.MonkeyPatch)
 
 def test_progress_reaches_one_and_never_turns_back() -> None:
     seen: list[float] = []
-    scan(question(0.3, 0.7), [scanned(CATALOGUE["wilson"], True)], np.arange(1, 500), progress=lambda _, share: seen.append(share))
+    wilson = scanned(CATALOGUE["wilson"], coverage=True)
+    scan(question(0.3, 0.7), [wilson], np.arange(1, 500), progress=lambda _, share: seen.append(share))
     assert seen == sorted(seen)
     assert len(seen) > 2
     assert seen[-1] == pytest.approx(1.0)
@@ -215,6 +216,5 @@ def test_first_and_safe() -> None:
 
 
 def test_the_plan_asks_the_question() -> None:
-    from coverage_lab.sizing.scan import asked
-
     assert asked(plan()).columns == ("worst_miss", "minimum_at", "mean_miss")
+    assert "half_width" in asked(plan(precision=Precision(0.05))).columns
