@@ -34,7 +34,7 @@ class Found:
 
 @dataclass(frozen=True)
 class Inflation:
-    """What the sample has to make up for; used in this order: design effect, finite population, losses, whole clusters."""
+    """What the sample has to make up for, in this order: design effect, finite population, losses, whole clusters."""
 
     design_effect: float = 1.0
     population: int | None = None
@@ -46,7 +46,7 @@ class Inflation:
 class Rung:
     """One step of the ladder: its value unrounded, and the ceiling that is printed."""
 
-    name: Literal["base", "design_effect", "finite", "loss", "whole_clusters", "units"]
+    name: str  # base, design_effect, finite, loss, units
     value: float
     ceiling: int
 
@@ -84,13 +84,8 @@ class Baseline:
 
     def document(self) -> dict[str, Any]:
         """The two sizes, and what they really deliver."""
-        rows = self.delivers.astype(object).where(self.delivers.notna(), None).to_dict("records")
-        return {
-            "worst_case": self.worst_case_n,
-            "guess": self.guess_n,
-            "guess_at": self.guess_at,
-            "delivers": rows,
-        }
+        sizes = {"worst_case": self.worst_case_n, "guess": self.guess_n, "guess_at": self.guess_at}
+        return {**sizes, "delivers": rows_of(self.delivers)}
 
 
 @dataclass(frozen=True)
@@ -127,16 +122,8 @@ class Decided:
 
     def document(self) -> dict[str, Any]:
         """As `sample-size --json` prints it."""
-        rows = self.by_method.astype(object).where(self.by_method.notna(), None).to_dict("records")
-        return {
-            **self.found.document(),
-            "claim": self.claim,
-            "n": self.n,
-            "critical": self.critical,
-            "size": self.size,
-            "power": self.power,
-            "by_method": rows,
-        }
+        figures = {"claim": self.claim, "n": self.n, "critical": self.critical, "size": self.size, "power": self.power}
+        return {**self.found.document(), **figures, "by_method": rows_of(self.by_method)}
 
 
 @dataclass(frozen=True)
@@ -154,8 +141,7 @@ class SizingVerdict:
     prefer: tuple[str, ...]
     needs: Mapping[str, int]
     alternatives: tuple[Mapping[str, Any], ...]
-    best: Mapping[str, Any] | None
-    statement: str | None  # what seeing no event would allow to say
+    best: Mapping[str, Any] | None  # without a recommendation: the closest that was found
 
     def document(self) -> dict[str, Any]:
         """As `sample-size --json` prints it."""
@@ -169,7 +155,6 @@ class SizingVerdict:
             "needs": dict(self.needs),
             "alternatives": [dict(item) for item in self.alternatives],
             "best": dict(self.best) if self.best is not None else None,
-            "statement": self.statement,
         }
 
 
@@ -191,6 +176,7 @@ class Sizing:
     rare: pd.DataFrame
     characteristic: pd.DataFrame
     formula: Baseline | None
+    zero_events: str | None  # what seeing no event would allow to say, in words
     seen: Seen | None
     decision: Decided | None
     inflated: Ladder | None
@@ -203,9 +189,10 @@ class Sizing:
             "format": FORMAT,
             "plan": dict(self.plan.document),
             "horizon": self.horizon,
-            "methods": [self._method_document(row) for row in self.methods.to_dict("records")],
+            "methods": [self._method_document(row) for row in rows_of(self.methods)],
             "formula": self.formula.document() if self.formula else None,
-            "rare": self.rare.astype(object).where(self.rare.notna(), None).to_dict("records"),
+            "rare": rows_of(self.rare),
+            "zero_events": self.zero_events,
             "seen": self.seen.document() if self.seen else None,
             "decision": self.decision.document() if self.decision else None,
             "inflated": self.inflated.document() if self.inflated else None,
@@ -217,9 +204,12 @@ class Sizing:
         """One method with its targets."""
         name = str(row["method"])
         by = {target: found.document() if found else None for target, found in self.by_method[name].items()}
-        return {"method": name, **{key: _whole(row[key]) for key in ("first_n", "safe_n")}, "by": by}
+        return {"method": name, "first_n": row["first_n"], "safe_n": row["safe_n"], "by": by}
 
 
-def _whole(value: Any) -> int | None:
-    """A nullable whole number of a frame as Python has it."""
-    return int(value) if value == value and value is not None else None
+def rows_of(frame: pd.DataFrame) -> list[dict[str, Any]]:
+    """The rows of a frame with None where it has nothing, and plain Python numbers."""
+    return [
+        {str(key): None if value != value else value for key, value in row.items()}
+        for row in frame.astype(object).where(frame.notna(), None).to_dict("records")
+    ]

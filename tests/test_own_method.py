@@ -23,7 +23,9 @@ def plan(**methods) -> Plan:
 def house_rule(events, trials, tail):
     """Plus-or-minus when both counts are at least 5, else Clopper-Pearson."""
     enough = (events >= 5) & (trials - events >= 5)
-    pairs = zip(cl.intervals.wald(events, trials, tail), cl.intervals.clopper_pearson(events, trials, tail), strict=True)
+    pairs = zip(
+        cl.intervals.wald(events, trials, tail), cl.intervals.clopper_pearson(events, trials, tail), strict=True
+    )
     return tuple(np.where(enough, a, b) for a, b in pairs)
 
 
@@ -36,7 +38,6 @@ def test_a_rule_that_is_not_monotone_is_audited_exactly() -> None:
     p = np.linspace(0.005, 0.05, 3001)
     x = np.arange(251)
     lower, upper = house_rule(x, np.array([250]), 0.025)
-
 
     covers = (lower <= p[:, None]) & (p[:, None] <= upper)
     seen = (binom.pmf(x, 250, p[:, None]) * covers).sum(axis=1).min()

@@ -67,7 +67,7 @@ def test_the_table_is_the_committed_report() -> None:
         row = rows[label]
         assert float(worst) == pytest.approx(100 * row["minimum_coverage"], abs=0.1)
         assert float(mean) == pytest.approx(100 * row["mean_coverage"], abs=0.1)
-        assert float(width) == pytest.approx(100 * row["mean_width"], abs=0.011)
+        assert float(width) == pytest.approx(100 * row["mean_width"], abs=0.0051)
 
 
 def test_length_and_opening() -> None:

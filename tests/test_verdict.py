@@ -159,3 +159,9 @@ def test_the_switch_to_wilson_comes_near_forty() -> None:
     """At 95 % with 2.5 expected events the exact interval is named for small n, wilson from n of some 35 on."""
     names = {n: decided(plan(n, 1.25 / n, 5 / n, methods={}))[0].method for n in (15, 25, 60, 120)}
     assert names == {15: "clopper-pearson", 25: "clopper-pearson", 60: "wilson", 120: "wilson"}
+
+
+def test_rounding_of_limits_near_one_breaks_no_guarantee() -> None:
+    """At confidence 0.999999 a limit near 1 is rounded by 1e-16: Clopper-Pearson must still count as guaranteed."""
+    p = plan(250, 0.5, 1.0, confidence=0.999999, standard={"kind": "guaranteed"}, methods={"only": ["clopper-pearson"]})
+    assert decided(p)[0].method == "clopper-pearson"

@@ -21,12 +21,16 @@ def answer(document: Document, page: Path | None) -> list[str]:
     width = min(WIDEST, shutil.get_terminal_size().columns - 1)
     facts = list(_facts(document))
     longest = max(len(name) for name, _ in facts)
-    lines = [*textwrap.wrap(document["verdict"]["sentence"], width), ""]
+    lines = [*_wrapped(document["verdict"]["sentence"], width), ""]
     for name, value in facts:
-        hanging = " " * (longest + 2)
-        lines += textwrap.wrap(f"{name:<{longest}}  {value}", max(width, longest + 30), subsequent_indent=hanging)
+        lines += _wrapped(f"{name:<{longest}}  {value}", max(width, longest + 30), " " * (longest + 2))
     last = [f"{'Report':<{longest}}  {page}"] if page is not None else []
     return [*lines[: MOST_LINES - len(last)], *last]
+
+
+def _wrapped(text: str, width: int, hanging: str = "") -> list[str]:
+    """Lines of at most that width, names with hyphens unbroken."""
+    return textwrap.wrap(text, width, subsequent_indent=hanging, break_on_hyphens=False)
 
 
 def _facts(document: Document) -> Iterator[tuple[str, str]]:

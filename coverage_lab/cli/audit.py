@@ -9,7 +9,7 @@ import click
 
 from coverage_lab.checks import InputFault
 from coverage_lab.cli import options
-from coverage_lab.cli.door import NO_RECOMMENDATION
+from coverage_lab.cli.door import KEPT, NO_RECOMMENDATION
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -128,7 +128,9 @@ def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
 
     from coverage_lab import study
 
-    keep = _existing(folder.parent) / f".{folder.name}.kept"
+    target = folder.absolute()
+    keep = _existing(target.parent) / f".{target.name}.kept"
+    click.get_current_context().meta[KEPT] = keep
     with progress(quiet) as report:
         try:
             return study.audit(plan, workers=workers, progress=report, keep=keep)

@@ -13,6 +13,7 @@ UNUSABLE = 2
 INTERRUPTED = 130
 
 ARGUMENTS = "coverage_lab.arguments"
+KEPT = "coverage_lab.kept"  # a file of finished work, when there can be one
 
 
 class Door(click.Group):
@@ -31,14 +32,20 @@ class Door(click.Group):
             _say(fault.faults)
             ctx.exit(UNUSABLE)
         except KeyboardInterrupt:
-            again = shlex.join(["coverage-lab", *ctx.meta[ARGUMENTS]])
-            _say(["interrupted: finished work is kept; to go on, run the same command again:", f"  {again}"])
+            _say(_interrupted(ctx))
             ctx.exit(INTERRUPTED)
         except OSError as error:
             if error.errno == errno.EPIPE:  # whoever was reading has stopped: click knows what to do
                 raise
             _say([f"{error.filename or 'output'}: cannot be read or written: {error.strerror or error}"])
             ctx.exit(UNUSABLE)
+
+
+def _interrupted(ctx: click.Context) -> list[str]:
+    """What becomes of the work done so far, and the command that goes on with it."""
+    kept = ctx.meta.get(KEPT)
+    state = f"finished work is kept in {kept}" if kept is not None and kept.exists() else "nothing was written"
+    return [f"interrupted: {state}; to go on, run again:", f"  {shlex.join(['coverage-lab', *ctx.meta[ARGUMENTS]])}"]
 
 
 def _say(lines: Iterable[str]) -> None:

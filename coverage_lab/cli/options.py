@@ -1,7 +1,7 @@
 """Options that several commands share. Values arrive as typed; the plan's schema judges them all at once."""
 
 from collections.abc import Callable
-from typing import Any
+from typing import Any, TextIO
 
 import click
 
@@ -24,6 +24,11 @@ side = click.option(
 )
 as_json = click.option("--json", "as_json", is_flag=True, help="Print the answer as JSON, and nothing else.")
 quiet = click.option("--quiet", is_flag=True, help="No progress, no remarks; faults are still said.")
+
+
+def watched(stream: TextIO | None) -> bool:
+    """Whether a person is looking at the stream; a closed one is None."""
+    return stream is not None and stream.isatty()
 
 
 def together(*steps: Callable[[], Any]) -> list[Any]:

@@ -4,13 +4,15 @@ import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 
+from coverage_lab.cli.options import watched
+
 Report = Callable[[str, float], None]
 
 
 @contextmanager
 def progress(quiet: bool) -> Iterator[Report | None]:
     """A function to be told what is being done and the share that is done; None where nobody is watching."""
-    if quiet or not sys.stderr.isatty():
+    if quiet or not watched(sys.stderr):
         yield None
         return
     from rich.console import Console

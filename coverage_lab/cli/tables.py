@@ -6,6 +6,8 @@ from collections.abc import Sequence
 
 import click
 
+from coverage_lab.cli.options import watched
+
 
 def show_json(content: object) -> None:
     """One JSON document."""
@@ -14,7 +16,7 @@ def show_json(content: object) -> None:
 
 def show_table(headings: Sequence[str], rows: Sequence[Sequence[str]]) -> None:
     """A table: drawn on a terminal, plain aligned text anywhere else."""
-    if sys.stdout.isatty():
+    if watched(sys.stdout):
         _drawn(headings, rows)
         return
     widths = [max(len(row[k]) for row in (headings, *rows)) for k in range(len(headings))]
@@ -29,7 +31,9 @@ def _drawn(headings: Sequence[str], rows: Sequence[Sequence[str]]) -> None:
     from rich.table import Table
     from rich.text import Text
 
-    table = Table(*headings, box=box.SIMPLE_HEAD)
+    table = Table(box=box.SIMPLE_HEAD)
+    for k, heading in enumerate(headings):
+        table.add_column(heading, overflow="fold", no_wrap=k == 0)  # names are typed again: never cut
     for row in rows:
         table.add_row(*(Text(cell) for cell in row))
     Console().print(table)

@@ -13,7 +13,7 @@ from coverage_lab.intervals.inputs import floats, pair
 from coverage_lab.intervals.solve import root
 from coverage_lab.records import Array, Bounds, Method
 
-LARGEST_N = 1000  # the table is built one count after another, in time that grows faster than n
+LARGEST_N = 1000  # the table is built one count after another, and checked against brute force only for small n
 
 
 def shortest_exact(events: ArrayLike, trials: ArrayLike, tail: ArrayLike) -> Bounds:

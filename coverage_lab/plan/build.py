@@ -11,7 +11,7 @@ from coverage_lab import designs
 from coverage_lab.checks import InputFault, expected, unknown
 from coverage_lab.plan.check import Checked, check, check_head
 from coverage_lab.plan.faults import Fault, Source
-from coverage_lab.plan.lines import lines_of
+from coverage_lab.plan.lines import KeyPath, lines_of
 from coverage_lab.plan.overrides import overridden
 from coverage_lab.plan.own import Extra, known_methods
 from coverage_lab.plan.reading import parsed, plain
@@ -88,8 +88,10 @@ def _plan(document: Mapping[str, Any], source: Source, title: str, extra: Extra 
     """The plan, or every fault of it in the order of the file."""
     checked = check(document)
     known, own_faults = known_methods(extra or {})
-    found = [*checked.faults, *_beyond_schema(document, checked, known)]
-    faults = sorted({fault.path: fault for fault in reversed(found)}.values(), key=source.rank)
+    found: dict[KeyPath, Fault] = {}
+    for fault in (*checked.faults, *_beyond_schema(document, checked, known)):
+        found.setdefault(fault.path, fault)
+    faults = sorted(found.values(), key=source.rank)
     if faults or own_faults:
         raise InputFault(*(source.line(fault) for fault in faults), *own_faults)
     return _built(checked, known, title)

@@ -116,7 +116,11 @@ def _worded_between(context: Mapping[str, Any], place: _Place) -> Fault:
     """A fault between keys."""
     if context["kind"] == "field":
         return Fault(place.path(context["key"]), context["what"], place.content[context["key"]])
-    came = f"only {', '.join(str(key) for key in place.content)}" if place.content else "nothing"
+    came = (
+        f"only {', '.join(key if str(key).isprintable() else repr(key) for key in place.content)}"
+        if place.content
+        else "nothing"
+    )
     return Fault(place.path(), f"expected {context['what']}, came {came}", where=place.title)
 
 

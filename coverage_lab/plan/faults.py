@@ -48,7 +48,9 @@ class Source:
         return ": ".join(part for part in (place, self._said(fault)) if part)
 
     def rank(self, fault: Fault) -> int:
-        """For listing faults in the order of the file."""
+        """For listing faults in the order of the file; those of options come after it."""
+        if fault.path[:2] in self.options:
+            return LAST
         return line_of(fault.path, self.lines) or LAST
 
     def _said(self, fault: Fault) -> str:

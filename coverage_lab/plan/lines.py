@@ -20,7 +20,8 @@ def lines_of(text: str) -> dict[KeyPath, int]:
     for line, header, parsed in _statements(text):
         if header:
             table = _opened(parsed, opened)
-            found.setdefault(table, line)
+            for length in range(1, len(table) + 1):
+                found.setdefault(table[:length], line)
         else:
             for path in _paths(parsed):
                 found.setdefault((*table, *path), line)

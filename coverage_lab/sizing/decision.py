@@ -5,6 +5,7 @@ mirror. Power saws as n grows, because c jumps: the first n that has the power i
 """
 
 from collections.abc import Sequence
+from typing import Literal
 
 import numpy as np
 import pandas as pd
@@ -14,20 +15,32 @@ from coverage_lab.engine.bounds import evaluate, inapplicable
 from coverage_lab.engine.branch import Runs, branch_and_bound
 from coverage_lab.engine.minimum import identity
 from coverage_lab.probability import at_least, at_most, likely, point
-from coverage_lab.records import Array, Counts, Decision, Method
+from coverage_lab.records import Array, Counts, Decision, Method, Side
 from coverage_lab.records_sizing import Decided, Found
-from coverage_lab.sizing.far import Flags, first_and_safe, look
+from coverage_lab.sizing.far import Flags, Terrain, first_and_safe, look
 
 TIES = 1e-12
 WHOLE_TABLE_UP_TO = 20_000
 FLOOR = 1e-18  # outcomes less likely than this under every p that matters are left out above that n
 
+HALVINGS = 25.0  # evaluations that one n takes, for the search beyond the exact scan
 METHOD_COLUMNS = ["method", "label", "critical", "worst_size", "power"]
 
 
 def above(decision: Decision) -> bool:
     """Whether the claim is that the proportion lies above the goal."""
     return decision.believed > decision.goal
+
+
+def claim(decision: Decision) -> Literal["above", "below"]:
+    """The claim in a word."""
+    return "above" if above(decision) else "below"
+
+
+def _side(decision: Decision, method: Method) -> Side:
+    """The bound that the claim needs, or the interval for a method that has no bounds."""
+    wanted: Side = "lower" if above(decision) else "upper"
+    return wanted if wanted in method.sides else "two-sided"
 
 
 def critical(decision: Decision, n: Counts) -> Counts:
@@ -62,25 +75,24 @@ def rough_size(decision: Decision) -> int:
     return max(1, int(np.ceil((reach / (q - p)) ** 2)))
 
 
-def decide(decision: Decision, methods: Sequence[Method], horizon: int, exact_up_to: int, top: int) -> Decided:
+def decide(decision: Decision, methods: Sequence[Method], horizon: int, top: int) -> Decided:
     """First and safe n of the exact test, and at the safe n the same claim by every method's interval.
 
-    Args:
-        horizon: every n up to here is looked at; beyond `exact_up_to` a bracket and its neighbourhood, up to `top`.
+    Every n up to the horizon is looked at; beyond it a bracket and its neighbourhood, up to `top`.
     """
-    table = by_n(decision, np.arange(1, min(horizon, exact_up_to) + 1))
+    table = by_n(decision, np.arange(1, horizon + 1))
     n = table["n"].to_numpy()
     found = Found(*first_and_safe(n, _enough(decision, table)), f"every n from 1 to {n[-1]} checked")
     if found.safe_n is None and top > n[-1]:
-        far = look(lambda some: _enough(decision, by_n(decision, some)), int(n[-1]) + 1, top, lambda _: 50.0)
+        terrain = Terrain(min(decision.goal, 1 - decision.goal), lambda _: HALVINGS)
+        far = look(lambda some: _enough(decision, by_n(decision, some)), int(n[-1]) + 1, top, terrain)
         found = Found(found.first_n or far.first_n, far.safe_n, f"{found.checked}; {far.checked}")
-    claim = "above" if above(decision) else "below"
     if found.safe_n is None:
-        return Decided(claim, found, None, None, None, None, pd.DataFrame(columns=METHOD_COLUMNS), table)  # type: ignore[arg-type]
+        return Decided(claim(decision), found, None, None, None, None, pd.DataFrame(columns=METHOD_COLUMNS), table)
     here = by_n(decision, np.array([found.safe_n])).iloc[0]
     compared = by_method(decision, methods, found.safe_n)
     figures = int(here["critical"]), float(here["size"]), float(here["power"])
-    return Decided(claim, found, found.safe_n, *figures, compared, table)  # type: ignore[arg-type]
+    return Decided(claim(decision), found, found.safe_n, *figures, compared, table)
 
 
 def _enough(decision: Decision, table: pd.DataFrame) -> Flags:
@@ -96,11 +108,10 @@ def by_method(decision: Decision, methods: Sequence[Method], n: int) -> pd.DataF
     """
     rows = []
     for method in methods:
-        side = "lower" if above(decision) else "upper"
-        used = side if side in method.sides else "two-sided"
-        if inapplicable(method, ("events", "trials"), n, used) is None:  # type: ignore[arg-type]
+        side = _side(decision, method)
+        if inapplicable(method, ("events", "trials"), n, side) is None:
             events = _events(decision, n)
-            limits = evaluate(method, {"events": events, "trials": np.array([n])}, used, decision.alpha)  # type: ignore[arg-type]
+            limits = evaluate(method, {"events": events, "trials": np.array([n])}, side, decision.alpha)
             claims = limits.lower >= decision.goal if above(decision) else limits.upper <= decision.goal
             rows.append((method.name, method.label, *_judged(decision, events, claims, n)))
     return pd.DataFrame(rows, columns=METHOD_COLUMNS).astype({"critical": "Int64", "worst_size": float, "power": float})
@@ -118,18 +129,18 @@ def _judged(decision: Decision, events: Counts, claims: Flags, n: int) -> tuple[
     """Critical count, worst size and power of a rule that makes the claim at some of the events."""
     order = claims if above(decision) else claims[::-1]
     ranked = events if above(decision) else events[::-1]
-    power = float(point(events, n, decision.believed) @ claims)
+    power = float(point(events, n, decision.believed)[claims].sum())
     if (np.diff(order.astype(int)) >= 0).all():
         count = int(ranked[np.argmax(order)]) if order.any() else None
         if count is None:
             return None, 0.0, 0.0
-        here = np.array([count]), np.array([n])
-        return count, *(float(chance_of_claim(decision, *here, p)[0]) for p in (decision.goal, decision.believed))
+        at, size = np.array([count]), np.array([n])
+        return count, float(chance_of_claim(decision, at, size, decision.goal)[0]), power
     return None, _worst_size(decision, events, claims, n), power
 
 
 def _worst_size(decision: Decision, events: Counts, claims: Flags, n: int) -> float:
-    """The largest chance of the claim over the wrong side: 1 minus the least chance of making none, by branch-and-bound."""
+    """The largest chance of the claim over the wrong side: 1 less the smallest chance of none, by branch-and-bound."""
     change = np.diff(np.concatenate([[0], (~claims).astype(np.int8), [0]]))
     first, last = events[np.flatnonzero(change == 1)], events[np.flatnonzero(change == -1) - 1]
     if len(first) == 0:

@@ -1,7 +1,12 @@
-"""Beyond the exact scan: a bracket says where to look; what is looked at there is stated with the answer."""
+"""Beyond the exact scan: a bracket says where to look; what is looked at there is stated with the answer.
+
+Targets on counts saw with n. A tooth is about 1/p long, and teeth reach across a band of about n/√(npq), the change of n
+that moves a chance by one point probability: so a band on both sides of the bracket's place is combed first.
+"""
 
 import math
 from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,11 +15,28 @@ from coverage_lab.records import Counts
 from coverage_lab.records_sizing import Found
 
 SPREAD = 64  # sizes looked at between the place found and four times it
-WORK = 2_000_000  # events that one step of a neighbourhood may bring
-MOVES = 40  # how often a neighbourhood may grow
+COMB = 20_000  # sizes at most with which a band is combed
+WORK = 2_000_000  # events that combing a band, or one step of a neighbourhood, may bring
+MOVES = 40  # how often a comb may move on, or a neighbourhood grow
 
 Flags = NDArray[np.bool_]
 Check = Callable[[Counts], Flags]
+
+
+@dataclass(frozen=True)
+class Terrain:
+    """What decides how far and how densely to look: the p at which chances saw, and about how many events an n brings."""
+
+    p: float
+    events: Callable[[int], float]
+
+    def band(self, n: int) -> int:
+        """How far teeth reach from n."""
+        return math.ceil(2 * math.sqrt(n / max(self.p * (1 - self.p), 1 / n)))
+
+    def affordable(self, n: int, most: int) -> int:
+        """How many sizes around n may be looked at."""
+        return int(np.clip(WORK / self.events(n), 8, most))
 
 
 def first_and_safe(n: Counts, met: Flags) -> tuple[int | None, int | None]:
@@ -40,31 +62,34 @@ def bracket(check: Check, start: int, top: int) -> int | None:
     return high
 
 
-def look(check: Check, start: int, top: int, events: Callable[[int], float]) -> Found:
-    """First and safe n in start … top, among those looked at, which `checked` states.
-
-    Sizes spread from the bracket's place to four times it must all meet the target; then every n of a neighbourhood is
-    looked at, which grows until it holds a failing n (or `start`) and safe ones after it.
-
-    Args:
-        events: about how many events one n brings, which bounds the neighbourhood.
-    """
+def look(check: Check, start: int, top: int, terrain: Terrain) -> Found:
+    """First and safe n in start … top, among those looked at, which `checked` states."""
     place = bracket(check, start, top)
-    spread = np.array([], dtype=np.int64)
-    while place is not None:
-        count = int(np.clip(WORK / events(place), 8, SPREAD))
-        spread = np.unique(np.geomspace(place, min(4 * place, top), count).astype(np.int64))
-        failing = np.flatnonzero(~check(spread))
-        if len(failing) == 0:
-            return _neighbourhood(check, (start, place, top), events(place), spread)
-        place = int(spread[failing[-1] + 1]) if failing[-1] + 1 < len(spread) else None
+    for _ in range(MOVES):
+        if place is None:
+            break
+        combed = _comb(place, start, top, terrain)
+        failing = np.flatnonzero(~check(combed))
+        after = int(failing[-1]) + 1 if len(failing) else 0
+        found = int(combed[after]) if after < len(combed) else None
+        if found is not None and found <= place:
+            return _neighbourhood(check, (start, found, top), terrain, combed)
+        place = found
     return Found(None, None, f"beyond that doubling up to {top}, without success")
 
 
-def _neighbourhood(check: Check, at: tuple[int, int, int], events: float, spread: Counts) -> Found:
+def _comb(place: int, start: int, top: int, terrain: Terrain) -> Counts:
+    """Sizes over the bands around a place, and spread from it to four times as far."""
+    band = terrain.band(place)
+    near = np.linspace(max(place - band, start), min(place + 2 * band, top), terrain.affordable(place, COMB))
+    far = np.geomspace(place, min(4 * place, top), terrain.affordable(place, SPREAD))
+    return np.unique(np.concatenate([near, far, [place]]).astype(np.int64))
+
+
+def _neighbourhood(check: Check, at: tuple[int, int, int], terrain: Terrain, combed: Counts) -> Found:
     """Every n around a place, growing on the side where the answer is still open."""
     start, place, top = at
-    width = max(8, min(math.ceil(2 * math.sqrt(place)), int(WORK / events)))
+    width = max(8, min(terrain.band(place), terrain.affordable(place, COMB)))
     n = np.arange(max(place - width, start), min(place + width, top) + 1)
     met = check(n)
     for _ in range(MOVES):
@@ -77,5 +102,5 @@ def _neighbourhood(check: Check, at: tuple[int, int, int], events: float, spread
             n, met = np.append(more, n), np.append(check(more), met)
         else:
             break
-    words = f"bracketed; every n from {n[0]} to {n[-1]} checked, and {len(spread)} n spread up to {spread[-1]}"
+    words = f"bracketed; every n from {n[0]} to {n[-1]} checked, and {len(combed)} n from {combed[0]} to {combed[-1]}"
     return Found(*first_and_safe(n, met), words)

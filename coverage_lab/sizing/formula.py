@@ -14,7 +14,7 @@ def ceiling(value: float) -> int:
 
 
 def margin_of_error(p: float, half_width: float, z: float) -> float:
-    """n = z²p(1-p)/d², unrounded: the size at which the plus-or-minus interval at p has half-width d (common practice)."""
+    """The taught formula z²p(1-p)/d², unrounded: the plus-or-minus interval then has half-width d (common practice)."""
     return z * z * p * (1 - p) / (half_width * half_width)
 
 
@@ -33,21 +33,22 @@ def nearest_half(low: float, high: float) -> float:
     return min(max(0.5, low), high)
 
 
-def ladder(base: float, inflation: Inflation) -> Ladder:
+def ladder(base: float, inflation: Inflation, finite: bool = True) -> Ladder:
     """From a calculated n to units, in this order: design effect, finite population, losses, whole clusters.
 
     n₁ = deff·n₀; n₂ = n₁/(1 + (n₁ - 1)/N) (Cochran 1977, Sampling Techniques, §4.4); n₃ = n₂/(1 - l); clusters rounded
     up; never above N. The order matters. Values stay unrounded from rung to rung; each rung prints its ceiling.
+    `finite` is False for a base that was computed for the finite population.
     """
     population = inflation.population
     limited = _limit(population)
     widened = base * inflation.design_effect
-    finite = widened if population is None else widened / (1 + (widened - 1) / population)
-    lossy = finite / (1 - inflation.loss)
+    corrected = widened / (1 + (widened - 1) / population) if finite and population is not None else widened
+    lossy = corrected / (1 - inflation.loss)
     clusters = None if inflation.cluster_size is None else ceiling(lossy / inflation.cluster_size)
     units = lossy if clusters is None or inflation.cluster_size is None else float(clusters * inflation.cluster_size)
-    values = {"base": base, "design_effect": widened, "finite": finite, "loss": lossy, "units": units}
-    rungs = tuple(Rung(name, value, limited(ceiling(value))) for name, value in values.items())  # type: ignore[arg-type]
+    values = {"base": base, "design_effect": widened, "finite": corrected, "loss": lossy, "units": units}
+    rungs = tuple(Rung(name, value, limited(ceiling(value))) for name, value in values.items())
     return Ladder(rungs, clusters, census=population is not None and rungs[-1].ceiling >= population)
 
 

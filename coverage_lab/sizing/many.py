@@ -6,6 +6,7 @@ limits turn back (what covers is no run then) are left to the engine's own minim
 """
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.special import betainc
 
 from coverage_lab.engine.means import Range
@@ -39,7 +40,7 @@ def _single(rows: Rows, p: float) -> tuple[Counts, Array, Array, Array]:
 
 
 def _ends(rows: Rows, lower: Array, upper: Array, low: float, high: float) -> tuple[Counts, Array, Array, Array]:
-    """Every place to look: row, p, and just beside it the p at which limits are ranked; limits closer than SAME are one."""
+    """Every place to look: row, p, and just beside it the p at which limits are ranked; those within SAME are one."""
     lefts = np.flatnonzero((lower > low) & (lower < high))
     rights = np.flatnonzero((upper > low) & (upper < high))
     every = np.arange(len(rows.n))
@@ -76,8 +77,8 @@ def _largest(row: Counts, values: Array, count: int) -> Counts:
     return found
 
 
-def _turning(rows: Rows, limits: Array) -> Array:
-    """Which rows have a limit below the one before it; (rows,) of booleans."""
+def _turning(rows: Rows, limits: Array) -> NDArray[np.bool_]:
+    """Which rows have a limit below the one before it; (rows,)."""
     return np.asarray(np.minimum.reduceat(rows.steps(limits), rows.start) < 0)
 
 

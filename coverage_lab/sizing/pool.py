@@ -29,11 +29,9 @@ def run(
     progress: Progress | None = None,
     label: str = "",
 ) -> list[T]:
-    """function(*task) of every task, in order; the number of workers changes no digit.
+    """The results of function(*task) in order; the number of workers changes no digit.
 
-    Args:
-        costs: each task's share of the work, for the progress line and to see whether a pool pays.
-        progress: called with the label and the share that is done.
+    `costs` are each task's share of the work, for the progress line and to see whether a pool pays.
 
     Raises:
         Interrupted: on Ctrl-C, with the number of leading tasks that were finished.

@@ -1,7 +1,7 @@
 """Rare outcomes: the n at which few events, or none, rule out a rate; the n that sees some events. Always one-sided.
 
-Seeing at most c events rules out the rate θ when P(X <= c | θ) <= 1 - confidence; in an unlimited population that is the
-same as a one-sided Clopper-Pearson upper bound of at most θ. In a population of N units a rate stands for ⌈θN⌉ events.
+Seeing at most c events rules out the rate θ when P(X <= c | θ) <= 1 - confidence; in an unlimited population that is
+the same as a one-sided Clopper-Pearson upper bound of at most θ. In a population of N a rate stands for ⌈θN⌉ events.
 All of these chances move one way with n, so that halving finds the n exactly.
 """
 
@@ -83,19 +83,28 @@ def bound(events: int, n: int, confidence: float, population: int | None = None)
     return low / population
 
 
-def rare_table(rare: Rare, confidence: float, hoped_for: float | None, population: int | None = None) -> pd.DataFrame:
+def rare_table(rare: Rare | None, confidence: float, population: int | None = None) -> pd.DataFrame:
     """For every number of events allowed: events, n, bound, probability_at_hoped_for, census (n is the population).
 
     n is <NA> where even a census cannot rule the rate out, because so many events are allowed.
     """
     rows = []
-    for events in rare.events if rare.limit is not None else ():
-        n = ruling_out(events, rare.limit, confidence, population) if rare.limit is not None else None
-        chance = chance_at_most(events, n, hoped_for, population) if n is not None and hoped_for is not None else None
-        limit = bound(events, n, confidence, population) if n is not None else None
-        rows.append((events, n, limit, chance, n is not None and n == population))
+    if rare is not None and rare.limit is not None:
+        rows = [_rare_row(c, rare.limit, rare.hoped_for, confidence, population) for c in rare.events]
     table = pd.DataFrame(rows, columns=RARE_COLUMNS)
-    return table.astype({"events": int, "n": "Int64", "bound": float, "probability_at_hoped_for": float, "census": bool})
+    table[["bound", "probability_at_hoped_for"]] = table[["bound", "probability_at_hoped_for"]].astype(float)
+    return table.astype({"events": "int64", "n": "Int64", "census": "bool"})
+
+
+def _rare_row(
+    events: int, limit: float, hoped_for: float | None, confidence: float, population: int | None
+) -> tuple[int, int | None, float | None, float | None, bool]:
+    """One number of events allowed."""
+    n = ruling_out(events, limit, confidence, population)
+    if n is None:
+        return events, None, None, None, False
+    chance = None if hoped_for is None else chance_at_most(events, n, hoped_for, population)
+    return events, n, bound(events, n, confidence, population), chance, n == population
 
 
 def seen(rare: Rare, population: int | None = None) -> Seen | None:
@@ -109,22 +118,20 @@ def seen(rare: Rare, population: int | None = None) -> Seen | None:
     return Seen(rare.see_at_least, rare.at_rate, n, chance, census=n == population)
 
 
-def characteristic(table: pd.DataFrame, limit: float | None, population: int | None = None) -> pd.DataFrame:
+def characteristic(table: pd.DataFrame, rare: Rare | None, population: int | None = None) -> pd.DataFrame:
     """Operating characteristics: the chance of at most the allowed events, by true rate from 0 to twice the limit.
 
     Columns events, n, p, probability; for a population the rates are those that it can have.
     """
     rows = []
-    for row in table[table["n"].notna()].to_dict("records") if limit is not None else ():
-        for p in np.unique(reachable(np.linspace(0.0, min(2 * (limit or 0.0), 1.0), CURVE_POINTS), population)):
-            chance = chance_at_most(int(row["events"]), int(row["n"]), float(p), population)
-            rows.append((int(row["events"]), int(row["n"]), float(p), chance))
+    if rare is not None and rare.limit is not None:
+        rates = np.linspace(0.0, min(2 * rare.limit, 1.0), CURVE_POINTS)
+        if population is not None:
+            rates = np.unique([marked(float(rate), population) / population for rate in rates])
+        for row in table[table["n"].notna()].to_dict("records"):
+            events, n = int(row["events"]), int(row["n"])
+            rows += [(events, n, float(p), chance_at_most(events, n, float(p), population)) for p in rates]
     return pd.DataFrame(rows, columns=["events", "n", "p", "probability"])
-
-
-def reachable(p: np.ndarray, population: int | None) -> np.ndarray:
-    """The rates themselves, or rounded up to whole events of the population."""
-    return p if population is None else np.array([marked(float(rate), population) / population for rate in p])
 
 
 def zero_statement(table: pd.DataFrame, confidence: float, population: int | None = None) -> str | None:
@@ -136,8 +143,8 @@ def zero_statement(table: pd.DataFrame, confidence: float, population: int | Non
     of = "" if population is None else f" of the {population}"
     level = percent(confidence)
     if n == population:
-        return f"If none of all {n} units is an event, there is none: with so small a population the answer is a census."
+        return f"With a population of {n} the answer is a census: if none of all {n} units is an event, there is none."
     return (
-        f"If no event is seen in {n} units{of}, the true rate is at most {percent(limit, 'up')} with {level} confidence "
-        f"(one-sided); this does not show that the rate is zero."
+        f"If no event is seen in {n} units{of}, the true rate is at most {percent(limit, 'up')} with {level} "
+        f"confidence (one-sided); this does not show that the rate is zero."
     )

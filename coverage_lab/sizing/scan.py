@@ -9,15 +9,16 @@ import pandas as pd
 
 from coverage_lab.engine.bounds import evaluate
 from coverage_lab.engine.means import Range
+from coverage_lab.engine.work import Progress
 from coverage_lab.intervals import CATALOGUE
 from coverage_lab.records import Array, Counts, Limits, Method, Plan, Side
 from coverage_lab.sizing.formula import nearest_half
 from coverage_lab.sizing.many import Prior, worst
-from coverage_lab.sizing.pool import Interrupted, Progress, run
+from coverage_lab.sizing.pool import Interrupted, run
 from coverage_lab.sizing.rows import WIDE, Rows, blocks, joined, rows
 from coverage_lab.sizing.widths import Chances, assurance, expected, half_widths, largest_expected, peaks_at
 
-EVENTS = 40_000  # of one block and method: large enough to hide the calls, small enough for memory and the progress line
+EVENTS = 40_000  # of one block and method: large enough to hide the calls, small enough for the progress line
 NARROW = 1.5  # standard errors beyond a limit's own reach within which events can still cover in the range
 COVERAGE_COLUMNS = ("worst_miss", "minimum_at", "mean_miss")
 COLUMNS = (*COVERAGE_COLUMNS, "half_width", "assurance")
@@ -135,7 +136,7 @@ def _covering(block: _Block, item: Scanned) -> tuple[Rows, Limits]:
 
 
 def measure(question: Asked, items: Sequence[Scanned], n: Counts) -> list[Table]:
-    """For every method its figures at each n that it is computed for; arrays of one length, absent where not asked for."""
+    """For every method its figures at each n that it is computed for; arrays (n,), absent where not asked for."""
     block = _Block(question, n)
     tables = []
     for item in items:
@@ -166,7 +167,7 @@ def _figures(block: _Block, item: Scanned) -> Table:
 
 
 def _half_width(block: _Block, method: Method, chances: Chances, limits: Limits) -> Array:
-    """Expected half-width at the worst p: at the value nearest ½ where the slope says so, else sought over the range."""
+    """Expected half-width at the worst p: the value nearest ½ where the slope says so, else sought over the range."""
     q, where = block.question, chances.rows
     values = half_widths(where, limits.lower, limits.upper, q.side)
     found = expected(chances, values, q.middle)

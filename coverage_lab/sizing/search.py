@@ -1,4 +1,4 @@
-"""First n and safe n of every target: an exact scan of every n to the horizon; beyond it a bracket and its neighbourhood.
+"""First n and safe n of every target: an exact scan of every n to the horizon; beyond it a bracketed neighbourhood.
 
 Coverage and assurance saw up and down as n grows, so a halving search would land on a lucky n. Up to 20 000 every n is
 looked at. Beyond, what is looked at is stated with the answer.
@@ -11,13 +11,13 @@ from dataclasses import dataclass, replace
 import numpy as np
 import pandas as pd
 
+from coverage_lab.engine.work import Progress
 from coverage_lab.records import Plan
 from coverage_lab.records_sizing import TARGETS, Found
-from coverage_lab.sizing.far import Check, Flags, bracket, first_and_safe, look
-from coverage_lab.sizing.pool import Progress
+from coverage_lab.sizing.far import Check, Flags, Terrain, bracket, first_and_safe, look
 from coverage_lab.sizing.scan import COVERAGE_COLUMNS, Scanned, asked, cost, scan
 from coverage_lab.sizing.widths import TIES
-from coverage_lab.verdict import thresholds
+from coverage_lab.verdict import ROUNDING, thresholds
 
 EXACT_UP_TO = 20_000
 SHORTEST_HORIZON = 2_000
@@ -48,7 +48,8 @@ class Targets:
         if name == "assurance" and self.assurance is not None:
             return (figures["assurance"] >= self.assurance * (1 - TIES)).to_numpy(dtype=bool)
         worst, mean = self.coverage or (0.0, 0.0)
-        return ((figures["worst_miss"] <= worst) & (figures["mean_miss"] <= mean)).to_numpy(dtype=bool)
+        slack = figures["n"] * ROUNDING
+        return ((figures["worst_miss"] <= worst + slack) & (figures["mean_miss"] <= mean + slack)).to_numpy(dtype=bool)
 
 
 @dataclass(frozen=True)
@@ -82,9 +83,7 @@ def search(
 ) -> Search:
     """First and safe n of every method for every target.
 
-    Args:
-        methods: what is scanned; coverage where it is asked for.
-        others: the largest n that rare outcomes and the decision ask for; it extends the default horizon.
+    `others` is the largest n that rare outcomes and the decision ask for; it extends the default horizon.
 
     Raises:
         Interrupted: on Ctrl-C, with the n that were finished.
@@ -154,16 +153,20 @@ def _farther(plan: Plan, item: Scanned, targets: Targets, horizon: int, found: B
     if len(places) == len(open_):
         rest = [name for name in targets.names if found[name] is not None and name not in open_]
         answers |= {name: _look(plan, item, targets, name, max(places), top) for name in rest}
-    return {**found, **{name: _together(found[name], answer, max(places, default=0)) for name, answer in answers.items()}}
+    start = max(places, default=0)
+    return {**found, **{name: _together(found[name], answer, start) for name, answer in answers.items()}}
 
 
 def _look(plan: Plan, item: Scanned, targets: Targets, name: str, start: int, top: int) -> Found:
     """One target beyond the exact scan."""
-    return look(_check(plan, item, targets, name), start, top, lambda n: float(cost(asked(plan), np.array([n]))[0]))
+    question = replace(asked(plan), columns=NEEDED[name])
+    p = question.expected if name == "assurance" else min(question.low, 1 - question.high)
+    terrain = Terrain(p, lambda n: float(cost(question, np.array([n]))[0]))
+    return look(_check(plan, item, targets, name), start, top, terrain)
 
 
 def _together(known: Found | None, answer: Found, start: int) -> Found:
-    """The exact scan and the look beyond it as one; a safe n of the scan stands if the target still holds at `start`."""
+    """The exact scan and the look beyond it as one; a safe n of the scan stands if the target holds from `start` on."""
     if known is None:
         return answer
     first = answer.first_n if known.first_n is None else known.first_n

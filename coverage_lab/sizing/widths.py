@@ -1,10 +1,11 @@
 """Expected half-width at the worst p of a range, and assurance at one p, for many n at once.
 
-The half-width is (U - L)/2 of the truncated interval; of a one-sided bound its excess over the truth, whose mean is that
-of U - x/n (or x/n - L).
+The half-width is (U - L)/2 of the truncated interval; of a one-sided bound its excess over the truth, whose mean is
+that of U - x/n (or x/n - L).
 """
 
 import numpy as np
+from numpy.typing import NDArray
 
 from coverage_lab.probability import point
 from coverage_lab.records import Array, Side
@@ -49,8 +50,8 @@ def expected(chances: Chances, values: Array, p: float) -> Array:
     return chances.rows.total(chances.at(p) * values)
 
 
-def peaks_at(chances: Chances, values: Array, p: float, low: float, high: float) -> Array:
-    """Which rows have their largest E[value] over [low, high] at p, the value of the range nearest ½; (rows,) booleans.
+def peaks_at(chances: Chances, values: Array, p: float, low: float, high: float) -> NDArray[np.bool_]:
+    """Which rows have their largest E[value] over [low, high] at p, the value of the range nearest ½; (rows,).
 
     dE/dp = n·Σ [value(x+1) - value(x)]·P(X = x | n-1). A mean over a binomial has no more turns than the values
     themselves (variation diminishing), and widths rise, then fall: one look at the slope settles it.

@@ -7,9 +7,9 @@ import pytest
 
 from coverage_lab.designs import Simple
 from coverage_lab.engine import work
+from coverage_lab.engine.audit import measure
 from coverage_lab.engine.bounds import evaluate
 from coverage_lab.engine.cross import cross_check, goodness_of_fit, paired, tail_chances, z_scores
-from coverage_lab.engine.audit import measure
 from coverage_lab.engine.kept import Kept
 from coverage_lab.engine.measures import measure as measures_of
 from coverage_lab.engine.measures import stack

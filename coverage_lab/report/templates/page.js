@@ -15,8 +15,11 @@ for (const table of document.querySelectorAll("table.sortable")) {
   heads.forEach((head, k) => {
     const button = document.createElement("button");
     button.type = "button";
-    button.append(...head.childNodes);
-    head.append(button);
+    button.textContent = head.textContent;
+    const printed = document.createElement("span"); // a heading that holds a button is not repeated on printed pages
+    printed.className = "printed";
+    printed.textContent = head.textContent;
+    head.replaceChildren(button, printed);
     button.addEventListener("click", () => {
       const down = head.getAttribute("aria-sort") === "ascending";
       const rows = [...body.rows];
