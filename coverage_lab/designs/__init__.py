@@ -15,6 +15,7 @@ from coverage_lab.records import Side
 
 __all__ = [
     "CATALOGUE",
+    "EVERY",
     "LAYERS",
     "Classification",
     "Clustered",
@@ -60,7 +61,7 @@ class LayerEntry:
     source: str
 
 
-CATALOGUE: dict[str, Entry] = {
+EVERY: dict[str, Entry] = {
     "simple": Entry(
         frame=Simple,
         label="simple random sample",
@@ -100,6 +101,9 @@ CATALOGUE: dict[str, Entry] = {
     ),
 }
 
+# What a plan can name so far.
+CATALOGUE: dict[str, Entry] = {"simple": EVERY["simple"]}
+
 LAYERS: dict[str, LayerEntry] = {
     "classification": LayerEntry(
         layer=Classification,
@@ -116,7 +120,7 @@ LAYERS: dict[str, LayerEntry] = {
 
 def preferred(design: Frame | Layered, side: Side) -> tuple[str, ...]:
     """The methods that may be named for a design by default, first choice first."""
-    entry = CATALOGUE[design.kind]
+    entry = EVERY[design.kind]
     test = next((k for k in getattr(design, "layers", ()) if isinstance(k, Classification)), None)
     if test is None:
         return entry.prefer(side)

@@ -3,7 +3,7 @@
 import mpmath
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy import stats
 
@@ -51,6 +51,7 @@ def test_points_and_tails_against_mpmath(x: int, n: int, population: int, marked
         assert abs(finite_at_least(x, n, population, marked) - above) < 1e-14 + 1e-12 * above
 
 
+@settings(deadline=None)
 @given(st.data())
 def test_small_populations_against_a_general_library(data: st.DataObject) -> None:
     population = data.draw(st.integers(1, 80))
