@@ -1,9 +1,12 @@
 """Exact laws of clustered samples: of one cluster, of a sum over clusters, and of a sum with its sum of squares."""
 
+import math
 from collections.abc import Sequence
+from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
+from scipy import special
 
 from coverage_lab.designs.frame import SMALLEST
 from coverage_lab.designs.lens import Lens
@@ -12,7 +15,8 @@ from coverage_lab.probability import betabinomial, point
 from coverage_lab.records import Array, Counts
 
 LARGEST_JOINT = 400_000  # cells of the joint law's array
-_KEPT = 4096  # laws of one cluster kept in memory
+NEVER = 1e-16  # an outcome of one cluster that is less likely does not occur in any simulation
+_KEPT = 512  # laws of one cluster kept in memory
 
 
 @lru_cache(maxsize=_KEPT)
@@ -23,9 +27,41 @@ def cluster_counts(m: int, p: float, icc: float, lens: Lens) -> Array:
 
 
 @lru_cache(maxsize=_KEPT)
-def cluster_pairs(m: int, p: float, icc: float, lens: Lens) -> Array:
-    """P(x recorded events, y recorded others) in a cluster of m units, array (m+1, m+1)."""
-    return recorded_pairs(_true_events(m, p, icc), lens.event, lens.other)
+def cluster_pairs(sizes: "int | RandomSizes", p: float, icc: float, lens: Lens) -> Array:
+    """P(x recorded events, y recorded others) in a cluster of fixed or random size, array (largest+1, largest+1)."""
+    law = sizes.law() if isinstance(sizes, RandomSizes) else np.eye(sizes + 1)[sizes]
+    pairs = np.zeros((len(law), len(law)))
+    for m in np.flatnonzero(law).tolist():
+        k = np.arange(m + 1)
+        pairs[k, m - k] = law[m] * _true_events(m, p, icc)
+    return recorded_pairs(pairs, lens)
+
+
+@dataclass(frozen=True)
+class RandomSizes:
+    """Cluster sizes that are gamma numbers with this mean and coefficient of variation, rounded, at least 1."""
+
+    mean: int
+    cv: float
+
+    def draw(self, shape: tuple[int, int], rng: np.random.Generator) -> Counts:
+        """Literal sizes."""
+        spread = self.cv**2
+        return np.maximum(np.rint(rng.gamma(1 / spread, self.mean * spread, shape)), 1).astype(np.int64)
+
+    @property
+    def largest(self) -> int:
+        """A size that no cluster exceeds in any simulation."""
+        spread = self.cv**2
+        return max(1, math.ceil(special.gammainccinv(1 / spread, NEVER) * self.mean * spread))
+
+    def law(self) -> Array:
+        """P(size = m), m = 0..largest."""
+        spread = self.cv**2
+        cuts = np.append(np.arange(1, self.largest) + 0.5, np.inf) / (self.mean * spread)
+        below = np.diff(special.gammainc(1 / spread, cuts), prepend=0.0)
+        above = -np.diff(special.gammaincc(1 / spread, cuts), prepend=1.0)
+        return np.concatenate([[0.0], np.where(cuts < 1 / spread, below, above)])  # each from its own small tail
 
 
 def _true_events(m: int, p: float, icc: float) -> Array:

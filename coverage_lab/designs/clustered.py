@@ -9,17 +9,26 @@ import numpy as np
 
 from coverage_lab.checks import InputFault, expected
 from coverage_lab.designs import guide
-from coverage_lab.designs.cluster_law import cluster_counts, cluster_pairs, joint_law, total_law
+from coverage_lab.designs.cluster_law import (
+    NEVER,
+    RandomSizes,
+    cluster_counts,
+    cluster_pairs,
+    joint_law,
+    total_law,
+)
 from coverage_lab.designs.frame import LARGEST_LAW, Frame, Units, compact
 from coverage_lab.designs.lens import Lens
 from coverage_lab.designs.simple import Simple
-from coverage_lab.records import Columns, Counts, Outcomes, Part
+from coverage_lab.records import Array, Columns, Counts, Outcomes, Part
 
 _VARYING = ("events", "events_squared", "events_by_size")
 _SIZES = ("trials", "clusters", "sizes_squared")
 _SUMS = (*_VARYING, *_SIZES)
 _TOTALS = frozenset({"events", "trials", "sizes_squared", "planned_icc"})
 _DRAWN_AT_A_TIME = 1 << 18  # clusters: their arrays stay in the processor's cache
+_LARGEST_PAIRS = 500  # units in a cluster: beyond, the law of its record takes too long to make
+_LARGEST_ENTANGLED = 40  # the same where mistakes and losses cannot be taken apart
 _LONGEST_TOTAL = 20_000  # units: beyond, the convolution of clusters takes longer than it is worth
 
 
@@ -109,7 +118,8 @@ class Clustered(Frame):
         """`size` literal samples: sizes, then a proportion for every cluster, then its events."""
         planned = self.sizes(n)
         shape = (size, len(planned))
-        sizes = self._random_sizes(shape, rng) if self.cv > 0 else np.broadcast_to(np.array(planned), shape)
+        random = self.random_sizes
+        sizes = np.broadcast_to(np.array(planned), shape) if random is None else random.draw(shape, rng)
         if self.icc == 0 or p in (0.0, 1.0):
             events = rng.binomial(sizes, p)
         else:
@@ -117,10 +127,10 @@ class Clustered(Frame):
             events = rng.binomial(sizes, rng.beta(p * strength, (1 - p) * strength, shape))
         return events, sizes - events
 
-    def _random_sizes(self, shape: tuple[int, int], rng: np.random.Generator) -> Counts:
-        """Rounded gamma numbers, at least 1."""
-        spread = self.cv**2
-        return np.maximum(np.rint(rng.gamma(1 / spread, self.largest * spread, shape)), 1).astype(np.int64)
+    @property
+    def random_sizes(self) -> RandomSizes | None:
+        """The law of the sizes where they vary from sample to sample."""
+        return RandomSizes(self.largest, self.cv) if self.cv > 0 else None
 
     def gather(self, events: Counts, others: Counts) -> Columns:
         """Sufficient statistics; a cluster of which nothing is recorded is no cluster."""
@@ -131,10 +141,10 @@ class Clustered(Frame):
         return {**{name: compact(values) for name, values in zip(_SUMS, sums, strict=True)}, **self.constants}
 
     def drawn(self, p: float, n: int, size: int, rng: np.random.Generator, lens: Lens) -> Columns:
-        """Clusters of planned sizes each from the exact law of one cluster, by table; otherwise unit by unit."""
+        """Each cluster from the exact law of one cluster, by table, where that has few outcomes; else unit by unit."""
         sizes = Counter(self.sizes(n))
-        if self.cv == 0 and all(_outcomes(m, lens) <= guide.LARGEST_LAW for m in sizes):
-            groups = [self._group(m, count, p, lens) for m, count in sizes.items()]
+        groups = self._groups(sizes, p, lens)
+        if groups is not None:
             return {**self._named(guide.draw_sums(groups, size, rng), sizes), **self.constants}
         step = max(1, _DRAWN_AT_A_TIME // sizes.total())
         lengths = [min(step, size - start) for start in range(0, size, step)]
@@ -145,15 +155,18 @@ class Clustered(Frame):
         }
         return {**{name: compact(values) for name, values in whole.items()}, **self.constants}
 
-    def _group(self, m: int, count: int, p: float, lens: Lens) -> guide.Group:
-        """`count` clusters of m units, with the outcomes of one; without losses its size needs no counting."""
-        if not lens.loses:
-            x = np.arange(m + 1)
-            return guide.Group(cluster_counts(m, p, self.icc, lens), np.stack([x, x * x, x * m], axis=1), count)
-        x, y = np.nonzero(np.add.outer(np.arange(m + 1), np.arange(m + 1)) <= m)
-        k = x + y
-        statistics = np.stack([x, x * x, x * k, k, np.minimum(k, 1), k * k], axis=1)
-        return guide.Group(cluster_pairs(m, p, self.icc, lens)[x, y], statistics, count)
+    def _groups(self, sizes: Counter[int], p: float, lens: Lens) -> list[guide.Group] | None:
+        """The clusters by size, with the outcomes of one and their chances; None where these are too many."""
+        random = self.random_sizes
+        largest = self.largest if random is None else random.largest
+        entangled = lens.mixes and lens.loses and lens.kept is None
+        if largest > (_LARGEST_ENTANGLED if entangled else _LARGEST_PAIRS):
+            return None
+        if random is None and not lens.loses:
+            return [_group_of_counts(m, cluster_counts(m, p, self.icc, lens), count) for m, count in sizes.items()]
+        drawn = sizes.items() if random is None else [(random, sizes.total())]
+        groups = [_group_of_pairs(cluster_pairs(size, p, self.icc, lens), count) for size, count in drawn]
+        return groups if all(len(group.chances) <= guide.LARGEST_LAW for group in groups) else None
 
     @staticmethod
     def _named(sums: Counts, sizes: Counter[int]) -> Columns:
@@ -247,9 +260,17 @@ def _size_sums(sizes: Counter[int]) -> Columns:
     return {name: np.array([value]) for name, value in zip(_SIZES, sums, strict=True)}
 
 
-def _outcomes(m: int, lens: Lens) -> int:
-    """How many outcomes the record of a cluster of m units can have."""
-    return (m + 1) * (m + 2) // 2 if lens.loses else m + 1
+def _group_of_counts(m: int, law: Array, count: int) -> guide.Group:
+    """`count` clusters of m units, all recorded: what is counted of them, x, x² and x·m."""
+    x = np.arange(m + 1)
+    return guide.Group(law, np.stack([x, x * x, x * m], axis=1), count)
+
+
+def _group_of_pairs(law: Array, count: int) -> guide.Group:
+    """`count` clusters with the law of (events, others) recorded: what is counted of them, sizes included."""
+    x, y = np.nonzero(law > NEVER)
+    m = x + y
+    return guide.Group(law[x, y], np.stack([x, x * x, x * m, m, np.minimum(m, 1), m * m], axis=1), count)
 
 
 def _icc_faults(icc: float, key: str) -> list[str]:

@@ -21,7 +21,7 @@ from coverage_lab.records import Array, Counts
 _BUCKETS = 1 << 16
 _BLOCK = 1 << 18  # numbers drawn at a time: they stay in the processor's cache
 _SHORTEST = 1 << 12  # samples drawn at a time, however many groups each has
-LARGEST_LAW = 1 << 13  # outcomes: beyond, too many buckets are ambiguous
+LARGEST_LAW = 1 << 14  # outcomes: beyond, too many buckets are ambiguous
 
 Word = list[tuple[int, int]]  # which statistic, and its largest sum
 
@@ -85,9 +85,10 @@ def _unpack(word: Word, totals: Counts, sums: Counts) -> None:
 
 def _add_draws(totals: Counts, layout: Sequence[Word], group: Group, rng: np.random.Generator) -> None:
     """Add to every total the words of `group.count` fresh draws."""
-    steps = np.cumsum(group.chances)
+    order = np.argsort(-group.chances, kind="stable")  # rare outcomes side by side share their ambiguous buckets
+    steps = np.cumsum(group.chances[order])
     certain, outcome = _guide(steps)
-    words = np.stack([_packed(word, group.statistics) for word in layout])
+    words = np.stack([_packed(word, group.statistics[order]) for word in layout])
     tables = words[:, outcome]  # (words, buckets)
     flag = _radix(layout[0])
     tables[0] += flag * ~certain

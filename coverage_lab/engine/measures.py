@@ -51,7 +51,10 @@ def measure(outcomes: Outcomes, limits: Stack, p: float, side: Side) -> dict[str
     draws = outcomes.draws
     weight = outcomes.weight if draws is None else np.rint(outcomes.weight * draws)
     total = 1.0 if draws is None else float(draws)
-    shares = np.stack([limits.upper < p, limits.lower > p, limits.outside, limits.zero]) @ weight / total
+    flags = np.stack([limits.upper < p, limits.lower > p, limits.outside, limits.zero])
+    if draws is not None:  # whole counts add up alike in any shape, and flat ones quickly
+        flags = flags.reshape(-1, flags.shape[-1])
+    shares = (flags @ weight).reshape(4, -1) / total
     widths = width(limits.lower, limits.upper, p, side)
     mean_width = widths @ weight / total
     below, above, outside, zero = shares

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from coverage_lab.records import Columns, Counts, Outcomes
 
 _DENSE = 1 << 22  # largest key range that is counted in a dense array
+_SPARSE = 16  # keys per sample up to which a dense array is quicker than sorting
 _LARGEST_KEY = (1 << 63) - 1
 _NEAR_ZERO = 1 << 12
 
@@ -125,7 +126,7 @@ def _key(columns: Sequence[Counts]) -> Counts:
 def _distinct(key: Counts) -> tuple[Counts, Counts]:
     """The number of every key's group in ascending order of keys, and the place of one member of each group."""
     low, span = int(key.min()), int(key.max()) - int(key.min()) + 1
-    if span <= _DENSE:
+    if span <= _DENSE and span <= _SPARSE * len(key):
         present = np.zeros(span, dtype=bool)
         present[key - low] = True
         group = (np.cumsum(present) - 1)[key - low]

@@ -32,9 +32,9 @@ def cluster_wald(
     tail: ArrayLike,
 ) -> Bounds:
     """The ratio estimate plus or minus Student's t with one degree of freedom less than there are clusters."""
-    x, n, k, tail = floats(events, trials, clusters, tail)
+    x, n, k = floats(events, trials, clusters)
     variance = _variance(events, trials, clusters, events_squared, events_by_size, sizes_squared)
-    reach = student_point(np.maximum(k - 1, 1), tail) * np.sqrt(variance)
+    reach = _of_clusters(clusters, tail) * np.sqrt(variance)
     return _from_two_clusters(k, x / n - reach, x / n + reach)
 
 
@@ -47,17 +47,19 @@ def cluster_logit(
     sizes_squared: ArrayLike,
     tail: ArrayLike,
 ) -> Bounds:
-    """The same on the scale of log-odds; Korn and Graubard's limits where there are no events or nothing else."""
+    """The same on the scale of log-odds; at 0 and n events Korn and Graubard's limits, there Clopper and Pearson's."""
     columns = (events, trials, clusters, events_squared, events_by_size, sizes_squared)
-    x, n, k, tail = floats(events, trials, clusters, tail)
+    x, n, k = floats(events, trials, clusters)
     inside = (x > 0) & (x < n)
     y = np.where(inside, x, n / 2)
     spread = np.sqrt(_variance(*columns)) / ((y / n) * ((n - y) / n))
-    reach = student_point(np.maximum(k - 1, 1), tail) * spread
+    reach = _of_clusters(clusters, tail) * spread
     centre = np.log(y / (n - y))
-    ends = korn_graubard(*columns, tail) if not inside.all() else (0.0, 1.0)
-    lower = np.where(inside, special.expit(centre - reach), ends[0])
-    return _from_two_clusters(k, lower, np.where(inside, special.expit(centre + reach), ends[1]))
+    lower, upper = (np.array(special.expit(centre + sign * reach)) for sign in (-1, 1))
+    end = ~inside
+    if end.any():
+        lower[end], upper[end] = clopper_pearson(x[end], n[end], tail)
+    return _from_two_clusters(k, lower, upper)
 
 
 def korn_graubard(
@@ -70,9 +72,9 @@ def korn_graubard(
     tail: ArrayLike,
 ) -> Bounds:
     """Clopper–Pearson with the effective number of trials, made smaller for the few clusters that it rests on."""
-    x, n, k, tail = floats(events, trials, clusters, tail)
+    x, n, k = floats(events, trials, clusters)
     size, known = _effective(events, trials, clusters, events_squared, events_by_size, sizes_squared)
-    ratio = student_point(np.maximum(n - 1, 1), tail) / student_point(np.maximum(k - 1, 1), tail)
+    ratio = student_point(np.maximum(n - 1, 1), tail) / _of_clusters(clusters, tail)
     size = np.where(known, size * ratio**2, size)
     return _from_two_clusters(k, *clopper_pearson(*_scaled(x, n, size), tail))
 
@@ -87,10 +89,9 @@ def wilson_deff_estimated(
     tail: ArrayLike,
 ) -> Bounds:
     """Wilson's interval with the effective number of trials and Student's t for the normal point."""
-    x, n, k, tail = floats(events, trials, clusters, tail)
+    x, n, k = floats(events, trials, clusters)
     size, _ = _effective(events, trials, clusters, events_squared, events_by_size, sizes_squared)
-    point = student_point(np.maximum(k - 1, 1), tail)
-    return _from_two_clusters(k, *wilson_at(*_scaled(x, n, size), point))
+    return _from_two_clusters(k, *wilson_at(*_scaled(x, n, size), _of_clusters(clusters, tail)))
 
 
 def wilson_deff_planned(
@@ -109,6 +110,11 @@ def clopper_pearson_deff_planned(
     x, n, mm, icc = floats(events, trials, sizes_squared, planned_icc)
     deff = 1 + (mm / n - 1) * icc
     return clopper_pearson(x / deff, n / deff, tail)
+
+
+def _of_clusters(clusters: ArrayLike, tail: ArrayLike) -> Array:
+    """Student's t with one degree of freedom less than there are clusters."""
+    return student_point(np.maximum(np.asarray(clusters) - 1, 1), tail)
 
 
 def _scaled(x: Array, n: Array, size: Array) -> tuple[Array, Array]:

@@ -8,6 +8,8 @@ from scipy import special
 
 from coverage_lab.records import Array, Bounds
 
+_FEW = 100
+
 
 def floats(*values: ArrayLike) -> tuple[Array, ...]:
     """The values as float64 arrays of their common broadcast shape."""
@@ -19,9 +21,16 @@ def normal_point(tail: Array) -> Array:
     return np.asarray(-special.ndtri(tail))
 
 
-def student_point(freedom: Array, tail: Array) -> Array:
-    """The t with P(T > t) = tail for Student's T with `freedom` > 0."""
-    return np.asarray(-special.stdtrit(freedom, tail))
+def student_point(freedom: ArrayLike, tail: ArrayLike) -> Array:
+    """The t with P(T > t) = tail for Student's T with whole `freedom` >= 1; looked up where values repeat."""
+    freedom, tail = np.asarray(freedom, dtype=np.float64), np.asarray(tail, dtype=np.float64)
+    if tail.size > 1 or freedom.size < _FEW:
+        return np.asarray(-special.stdtrit(freedom, tail))
+    least = freedom.min()
+    if freedom.max() - least > freedom.size:
+        return np.asarray(-special.stdtrit(freedom, tail))
+    table = -special.stdtrit(np.arange(least, freedom.max() + 1), tail)
+    return np.asarray(table[(freedom - least).astype(np.int64)])
 
 
 def pair(lower: ArrayLike, upper: ArrayLike) -> Bounds:
