@@ -3,7 +3,7 @@
 import pandas as pd
 
 from coverage_lab.records import Measurements, Plan, Verdict
-from coverage_lab.rounding import percent, proportion
+from coverage_lab.rounding import percent, proportion, whole
 
 ZERO_UNLIKELY = 5.0  # expected events from which zero is rarer than e^-5
 DISAGREEMENT = 1e-3  # cross-check p-values below this are a warning of their own
@@ -42,11 +42,12 @@ def _too_small(plan: Plan, verdict: Verdict) -> list[str]:
     if small is None:
         return []
     near_one = small["limit"] <= plan.outcome.low
-    events, word = (f"{verdict.n} events in {verdict.n}", "lower") if near_one else ("0 events", "upper")
-    needed = f"; n = {small['n_needed']} would" if small["n_needed"] else ""
+    n = whole(verdict.n)
+    events, word = (f"{n} events in {n}", "lower") if near_one else ("0 events", "upper")
+    needed = f"; n = {whole(small['n_needed'])} would" if small["n_needed"] else ""
     limit = proportion(small["limit"], "down" if near_one else "up")
     return [
-        f"n = {verdict.n} is too small to learn from: even {events} would give the {word} limit {limit} and exclude "
+        f"n = {n} is too small to learn from: even {events} would give the {word} limit {limit} and exclude "
         f"nothing in the planned range{needed}."
     ]
 
@@ -58,7 +59,7 @@ def _outside(plan: Plan, methods: pd.DataFrame, verdict: Verdict) -> list[str]:
     low, high = verdict.holds_on
     row = methods[(methods["n"] == verdict.n) & (methods["method"] == verdict.method)].iloc[0]
     if low <= 0 and high >= 1:
-        return [f"The {row['label']} meets the standard at n = {verdict.n} for every true proportion."]
+        return [f"The {row['label']} meets the standard at n = {whole(verdict.n)} for every true proportion."]
     claim = f"{percent(plan.outcome.low)} to {percent(plan.outcome.high)}"
     everywhere = row["everywhere_minimum_coverage"]
     worst = f"; over all proportions its coverage can fall to {percent(everywhere, 'down')}" if everywhere > 0 else ""

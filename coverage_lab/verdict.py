@@ -13,7 +13,7 @@ import pandas as pd
 
 from coverage_lab import reach
 from coverage_lab.records import Measurements, Plan, Verdict
-from coverage_lab.rounding import percent
+from coverage_lab.rounding import percent, whole
 
 WIDER = 1.05  # a method gives way to a later one on the list that is this much narrower on average
 SIMULATION_MARGIN = 3.0  # standard errors a simulated figure must clear to pass or to fail
@@ -197,7 +197,7 @@ def _why_named(plan: Plan, here: Mapping[str, Row], listed: Sequence[str], holdi
     """The recommendation in words, from the record that decided it."""
     row = here[named]
     return (
-        f"At n = {row['n']}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
+        f"At n = {whole(row['n'])}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
         f"{percent(row['minimum_coverage'], 'down')} everywhere in the planned range and "
         f"{percent(row['mean_coverage'], 'down')} on average; the standard asks {_standard(plan)}; "
         f"{_place(here, listed, holding, named)}."
@@ -221,10 +221,10 @@ def _why_not(plan: Plan, n: int, here: Mapping[str, Row], listed: Sequence[str],
     stated = f"stated list ({_labels(here, listed)})"
     if status == "undecided":
         return (
-            f"Undecided at n = {n}: simulated figures of the {stated} lie within 3 Monte Carlo standard errors of the "
-            f"standard, {_standard(plan)}; more replicates are needed."
+            f"Undecided at n = {whole(n)}: simulated figures of the {stated} lie within 3 Monte Carlo standard errors "
+            f"of the standard, {_standard(plan)}; more replicates are needed."
         )
-    return f"No method on the {stated} meets the standard at n = {n} and its neighbours: {_standard(plan)}."
+    return f"No method on the {stated} meets the standard at n = {whole(n)} and its neighbours: {_standard(plan)}."
 
 
 def _standard(plan: Plan) -> str:

@@ -450,14 +450,14 @@ def test_importing_the_package_loads_nothing_heavy() -> None:
     assert done.stdout == "[]\n"
 
 
-# --- no arguments end in a traceback
+# --- no arguments end in a traceback (no system lets one hold a NUL)
 
 OPTIONS = "--n --range --expected --confidence --side --replicates --seed --workers --out --json --method --data --from"
-VALUES = (
-    "--quiet --overwrite upper two-sided 0.95 95 0 -1 7 250 nan inf 1e400 wilson blaker plan.toml . é -- - 1.5 a\0b"
-)
+VALUES = "--quiet --overwrite upper two-sided 0.95 95 0 -1 7 250 nan inf 1e400 wilson blaker plan.toml . é -- - 1.5"
 WORDS = st.sampled_from([*OPTIONS.split(" "), *VALUES.split(" "), ""])
-ARGUMENTS = st.lists(WORDS | st.text(st.characters(exclude_categories=("Cs",)), max_size=4), max_size=7)
+ARGUMENTS = st.lists(
+    WORDS | st.text(st.characters(exclude_categories=("Cs",), exclude_characters="\0"), max_size=4), max_size=7
+)
 
 
 @settings(deadline=None, max_examples=150, suppress_health_check=[HealthCheck.function_scoped_fixture])

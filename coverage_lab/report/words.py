@@ -2,7 +2,6 @@
 
 import math
 from collections.abc import Iterable, Mapping
-from decimal import Decimal
 from typing import Any
 
 from coverage_lab.rounding import Towards, percent, rounded
@@ -32,11 +31,8 @@ SHORT_WIDTHS = {"two-sided": "mean width", "upper": "mean excess", "lower": "mea
 
 
 def share(value: float | None, towards: Towards = "nearest") -> str:
-    """A share in percent, or a dash: 0.93412 -> '93.4 %'. An exact 95 % less the last digits of a double is 95 %."""
-    if value is None:
-        return NOTHING
-    lacking = Decimal(f"{1 - value:.9g}") if value <= 1 else Decimal(0)
-    return percent(float(1 - lacking) if 0 < value < 1 else value, towards)
+    """A share in percent, or a dash: 0.93412 -> '93.4 %'."""
+    return NOTHING if value is None else percent(value, towards)
 
 
 def place(p: float | None, towards: Towards = "nearest") -> str:
