@@ -293,13 +293,17 @@ class Verdict:
 
 @dataclass(frozen=True)
 class Audit:
-    """A finished audit: the measurements, the verdicts and where they came from."""
+    """A finished audit: the measurements, the verdicts and where they came from.
+
+    table: the interval for every outcome; steady: worst and mean miss of a few methods at every n around the planned.
+    """
 
     plan: Plan
     methods: pd.DataFrame
     cells: pd.DataFrame
     curve: pd.DataFrame
     table: pd.DataFrame
+    steady: pd.DataFrame
     verdict: Verdict
     by_n: tuple[Verdict, ...]
     cross_check: CrossCheck | None

@@ -15,7 +15,7 @@ from coverage_lab import reach, verdict
 from coverage_lab.cautions import cautions
 from coverage_lab.checks import InputFault, expected, unknown
 from coverage_lab.designs import Simple
-from coverage_lab.engine.audit import measure
+from coverage_lab.engine.audit import measure, saw
 from coverage_lab.engine.bounds import evaluate, inapplicable
 from coverage_lab.engine.exact import listed, minimum_of, possible
 from coverage_lab.engine.work import Progress
@@ -24,10 +24,25 @@ from coverage_lab.plan import own_methods
 from coverage_lab.plan_text import plan_digest
 from coverage_lab.records import SIDES, Audit, Bounds, Interval, Method, Minimum, Part, Plan, Side, Verdict, tail_of
 from coverage_lab.report import write as write_folder
+from coverage_lab.report.notebook import audit_html, verdict_html
 
 WHOLE_TABLE_UP_TO = 100_000
 TABLE_FLOOR = 1e-12  # above that n only outcomes with a probability over this somewhere in the range are listed
 LIBRARIES = ("numpy", "scipy", "pandas", "matplotlib")
+
+
+class Decided(Verdict):
+    """A verdict that notebooks can show."""
+
+    def _repr_html_(self) -> str:
+        return verdict_html(self)
+
+
+class Audited(Audit):
+    """A finished audit that notebooks can show."""
+
+    def _repr_html_(self) -> str:
+        return audit_html(self)
 
 
 def audit(
@@ -54,14 +69,15 @@ def audit(
         plan = replace(plan, methods=(*plan.methods, *own_methods(extra)))
     measured = measure(plan, workers, progress, keep)
     methods = verdict.judged(measured)
-    by_n = tuple(verdict.decide(measured, methods, n) for n in plan.sizes)
+    by_n = tuple(Decided(**vars(verdict.decide(measured, methods, n))) for n in plan.sizes)
     decided = verdict.overall(by_n)
-    return Audit(
+    return Audited(
         plan=plan,
         methods=methods,
         cells=measured.cells,
         curve=measured.curve,
         table=interval_table(plan, decided),
+        steady=saw(plan),
         verdict=decided,
         by_n=by_n,
         cross_check=measured.cross_check,

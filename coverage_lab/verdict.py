@@ -22,6 +22,7 @@ LOPSIDED = 1.25  # times the tail: beyond this, misses on one side are said to d
 
 
 Row = Mapping[str, Any]  # one row of the judged methods table
+Steady = Mapping[str, Sequence[Row]]  # method -> {n, passes} at each neighbour
 Status = Literal["recommended", "none", "undecided"]
 
 
@@ -75,13 +76,13 @@ def judged(measured: Measurements) -> pd.DataFrame:
     return measured.methods.assign(passes=passes, why=[item.why for item in judgements])
 
 
-def steady_at(measured: Measurements, n: int, method: str) -> tuple[Mapping[str, Any], ...]:
-    """Whether the method meets the standard at each n-3 … n+3 that was looked at."""
-    rows = measured.steady[(measured.steady["planned"] == n) & (measured.steady["method"] == method)]
-    return tuple(
-        {"n": int(row["n"]), "passes": meets(measured.plan, int(row["n"]), row["worst_miss"], row["mean_miss"])}
-        for row in rows_of(rows)
-    )
+def steadiness(measured: Measurements, n: int) -> Steady:
+    """For every method whether it meets the standard at each n-3 … n+3 that was looked at."""
+    found: dict[str, list[Row]] = {}
+    for row in rows_of(measured.steady[measured.steady["planned"] == n]):
+        passes = meets(measured.plan, int(row["n"]), row["worst_miss"], row["mean_miss"])
+        found.setdefault(row["method"], []).append({"n": int(row["n"]), "passes": passes})
+    return found
 
 
 def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
@@ -89,7 +90,8 @@ def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
     plan = measured.plan
     here = {row["method"]: row for row in rows_of(methods[methods["n"] == n])}
     listed = [method.name for method in plan.prefer if here[method.name]["applies"]]
-    holding = [name for name in listed if _holds_up(measured, here, n, name)]
+    steady = steadiness(measured, n)
+    holding = [name for name in listed if _holds_up(here, steady, name)]
     named = _first_not_wide(here, holding)
     status: Status = "recommended" if named else _without_name(here, listed)
     row = here[named] if named else None
@@ -99,8 +101,8 @@ def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
         method=named,
         sentence=_why_named(plan, here, listed, holding, named) if named else _why_not(plan, n, here, listed, status),
         prefer=tuple(method.name for method in plan.prefer),
-        steady=steady_at(measured, n, named) if named else (),
-        alternatives=_alternatives(measured, here, n, named),
+        steady=tuple(steady.get(named, ())) if named else (),
+        alternatives=_alternatives(plan, here, steady, named),
         closest=_closest(here, listed, n) if named is None else None,
         too_small=reach.too_small(plan, n, named) if named else None,
         holds_on=reach.holds_on(plan, n, named)
@@ -120,9 +122,9 @@ def overall(by_n: Sequence[Verdict]) -> Verdict:
     return max(by_n, key=lambda item: item.n)
 
 
-def _holds_up(measured: Measurements, here: Mapping[str, Row], n: int, name: str) -> bool:
+def _holds_up(here: Mapping[str, Row], steady: Steady, name: str) -> bool:
     """Meets the standard at n and, where that can be computed exactly, at every neighbour."""
-    return here[name]["passes"] is True and all(item["passes"] for item in steady_at(measured, n, name))
+    return here[name]["passes"] is True and all(item["passes"] for item in steady.get(name, ()))
 
 
 def _first_not_wide(here: Mapping[str, Row], holding: Sequence[str]) -> str | None:
@@ -140,7 +142,7 @@ def _without_name(here: Mapping[str, Row], listed: Sequence[str]) -> Status:
 
 
 def _alternatives(
-    measured: Measurements, here: Mapping[str, Row], n: int, named: str | None
+    plan: Plan, here: Mapping[str, Row], steady: Steady, named: str | None
 ) -> tuple[Mapping[str, Any], ...]:
     """Every other method that meets the standard at n, its relative mean width, and what speaks against it."""
     found = []
@@ -148,17 +150,16 @@ def _alternatives(
         if row["passes"] is not True or row["method"] == named:
             continue
         relative = float(row["mean_width"] / here[named]["mean_width"]) if named else None
-        against = _against(measured, n, row["method"], relative)
+        against = _against(plan, steady, row["method"], relative)
         found.append({"method": row["method"], "relative_width": relative, "against": against})
     return tuple(found)
 
 
-def _against(measured: Measurements, n: int, name: str, relative: float | None) -> str:
+def _against(plan: Plan, steady: Steady, name: str, relative: float | None) -> str:
     """What speaks against naming this method."""
-    plan = measured.plan
     method = next(method for method in plan.methods if method.name == name)
     points = []
-    failing = [str(item["n"]) for item in steady_at(measured, n, name) if not item["passes"]]
+    failing = [str(item["n"]) for item in steady.get(name, ()) if not item["passes"]]
     if failing:
         points.append(f"fails at n = {', '.join(failing)}")
     if name not in [method.name for method in plan.prefer]:

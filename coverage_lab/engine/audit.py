@@ -1,6 +1,6 @@
 """The order of a measurement: list cells, draw, measure every n, look at the neighbours of n, compare the routes."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Set
 from pathlib import Path
 
 import pandas as pd
@@ -16,6 +16,9 @@ from coverage_lab.records import Measurements, Method, Outcomes, Plan
 
 NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
 ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
+PLAIN = "wald"  # the formula that everybody knows
+WIDE = 12  # how far on either side of n the worst coverage is shown …
+WIDE_UP_TO = 2000  # … up to this n; beyond it `NEIGHBOURS`, since every n costs more
 
 WORDS = ("label", "family", "source", "formula", "ends", "faults")
 WHOLE = {"simulated_replicates": "Int64"}
@@ -62,16 +65,33 @@ def steady(plan: Plan) -> pd.DataFrame:
     The preferred methods always; all others too while that is quick.
     """
     rows: list[dict[str, object]] = []
-    over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
-    for planned in plan.sizes if "enumerated" in plan.simulation.routes else ():
-        for n in range(max(1, planned - NEIGHBOURS), planned + NEIGHBOURS + 1):
-            methods = [m for m in applying(plan, n) if m in plan.prefer or planned <= ALL_STEADY_UP_TO]
-            parts = listed(plan.design, methods, n, (over.low, over.high), plan.side, plan.tail) if methods else []
-            found = figures(parts, over, plan.side) if parts else []
-            rows += [
-                {"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=False)
-            ]
+    for planned in plan.sizes:
+        names = {m.name for m in (plan.methods if planned <= ALL_STEADY_UP_TO else plan.prefer)}
+        rows += _beside(plan, planned, NEIGHBOURS, names)
     return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss", "mean_width"])
+
+
+def saw(plan: Plan) -> pd.DataFrame:
+    """How worst and mean miss move with n around every planned n, for the preferred methods and plus-or-minus."""
+    names = {PLAIN, *(method.name for method in plan.prefer)}
+    rows: list[dict[str, object]] = []
+    for planned in plan.sizes:
+        rows += _beside(plan, planned, WIDE if planned <= WIDE_UP_TO else NEIGHBOURS, names)
+    return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss"])
+
+
+def _beside(plan: Plan, planned: int, reach: int, names: Set[str]) -> list[dict[str, object]]:
+    """Exact figures of the named methods at every n within `reach` of the planned one; none without enumeration."""
+    if "enumerated" not in plan.simulation.routes:
+        return []
+    over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
+    rows: list[dict[str, object]] = []
+    for n in range(max(1, planned - reach), planned + reach + 1):
+        methods = [method for method in applying(plan, n) if method.name in names]
+        parts = listed(plan.design, methods, n, (over.low, over.high), plan.side, plan.tail) if methods else []
+        found = figures(parts, over, plan.side) if parts else []
+        rows += [{"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=False)]
+    return rows
 
 
 def _fits(found: Support) -> list[tuple[float, int]]:

@@ -16,7 +16,7 @@ from PIL import Image
 
 from coverage_lab.records import Audit
 from coverage_lab.report import captions, figures, figures_coverage
-from coverage_lab.report.folder import PAGE, Saved, check_target, load, write_data
+from coverage_lab.report.folder import PAGE, WORD_FILE, Saved, check_target, load, write_data
 from coverage_lab.report.staging import staged
 from coverage_lab.report.style import house_style
 from coverage_lab.report.view import page_content
@@ -87,7 +87,7 @@ def write_report(audit: Audit, folder: Path, *, overwrite: bool = False) -> Path
         OSError: the folder cannot be written.
     """
     check_target(folder, audit.plan.document, overwrite)
-    with staged(folder, [picture.file for picture in PICTURES]) as stage:
+    with staged(folder, [*(picture.file for picture in PICTURES), WORD_FILE]) as stage:
         write_data(audit, stage)
         _write_page(load(stage), stage)
     return folder / PAGE

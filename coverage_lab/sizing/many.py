@@ -5,6 +5,8 @@ between two neighbouring limits it rises, then falls, and at a limit itself the 
 limits turn back (what covers is no run then) are left to the engine's own minimum.
 """
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import betainc
@@ -101,22 +103,46 @@ def _by_engine(rows: Rows, lower: Array, upper: Array, between: tuple[float, flo
     return found.miss, found.at
 
 
+@dataclass(frozen=True)
 class Prior:
-    """What the mean over the range needs beside the limits, shared by all methods on the same rows; (flat,) each."""
+    """What the mean over the range needs beside the limits, shared by all methods on the same rows.
 
-    def __init__(self, rows: Rows, over: Range) -> None:
-        self.rows, self.over = rows, over
-        self.a, self.b = rows.events + over.prior[0], rows.trials - rows.events + over.prior[1]
-        self.weight = betabinomial(rows.events, rows.trials, *over.prior) / over.mass
-        self.at_low, self.at_high = betainc(self.a, self.b, over.low), betainc(self.a, self.b, over.high)
+    a, b, weight, at_low, at_high are (flat,): given x, p has a Beta(a, b) density; weight·I_t(a, b) is the chance of x
+    with p below t. `left_out` is the chance of all events that are not among the rows; (rows,).
+    """
+
+    rows: Rows
+    over: Range
+    a: Array
+    b: Array
+    weight: Array
+    at_low: Array
+    at_high: Array
+    left_out: Array
+
+    @classmethod
+    def on(cls, rows: Rows, over: Range) -> "Prior":
+        """On rows with every event that the range can produce."""
+        a, b = rows.events + over.prior[0], rows.trials - rows.events + over.prior[1]
+        weight = betabinomial(rows.events, rows.trials, *over.prior) / over.mass
+        at_low, at_high = betainc(a, b, over.low), betainc(a, b, over.high)
+        return cls(rows, over, a, b, weight, at_low, at_high, np.zeros(len(rows.n)))
+
+    def within(self, rows: Rows) -> "Prior":
+        """On rows of the same n with fewer events; the chance of the rest is summed, not subtracted from 1."""
+        place = (self.rows.start - self.rows.first)[rows.row] + rows.events
+        rest = self.weight * (self.at_high - self.at_low)
+        rest[place] = 0.0
+        columns = (column[place] for column in (self.a, self.b, self.weight, self.at_low, self.at_high))
+        return Prior(rows, self.over, *columns, left_out=self.rows.total(rest))
 
     def mean_miss(self, lower: Array, upper: Array) -> Array:
         """The mean miss rate over the range of every row, in closed form; (rows,).
 
         Every x that covers somewhere in the range must be among the events.
         """
-        covered = self._below(upper) - self._below(lower)
-        return np.maximum(1.0 - self.rows.total(self.weight * covered), 0.0)
+        missed = (self.at_high - self._below(upper)) + (self._below(lower) - self.at_low)
+        return self.left_out + self.rows.total(self.weight * missed)
 
     def _below(self, limit: Array) -> Array:
         """P(p < limit | x) with the limit held in the range; the incomplete beta only where it lies strictly inside."""

@@ -1,8 +1,8 @@
 """Quick two-sided bounds of binomial tails, to see which of many places are worth an exact look.
 
-For np <= k <= n, with σ = √(npq) and x = (k - np)/σ:  P(X >= k) = σ·b(k-1; n-1, p)·Y(x)·exp(E/σ), where Y is Mills' ratio
-and 0 <= E <= min(√(π/8), 1/x). B. D. McKay, "On Littlewood's estimate for the binomial distribution", Advances in
-Applied Probability 21:475 (1989).
+For np <= k <= n, with σ = √(npq) and x = (k - np)/σ:  P(X >= k) = σ·b(k-1; n-1, p)·Y(x)·exp(E/σ), where Y is Mills'
+ratio and 0 <= E <= min(√(π/8), 1/x). B. D. McKay, "On Littlewood's estimate for the binomial distribution", Advances
+in Applied Probability 21:475 (1989).
 """
 
 import numpy as np
@@ -11,6 +11,7 @@ from scipy.special import erfcx, gammaln
 from coverage_lab.records import Array, Counts
 
 SLACK = 1e-8  # rounding of the logarithms, far more than they lose
+NARROWEST = 0.1  # standard deviations below which the bounds are too far apart to be of use
 _HALF_PI_ROOT = np.sqrt(np.pi / 2)
 _LARGEST = np.sqrt(np.pi / 8)
 
@@ -29,8 +30,8 @@ def outside_bounds(first: Counts, after: Counts, n: Counts, p: Array) -> tuple[A
 def _tail(
     k: Counts, n: Counts, p: Array, spread: Array, logs: tuple[Array, Array], factorials: Array
 ) -> tuple[Array, Array]:
-    """Bounds of P(X >= k): McKay's where k is right of the mean, 0 where k > n, else no more than 0 and 1."""
-    ours = (k >= 1) & (k <= n) & (k >= n * p) & (spread > 0)
+    """Bounds of P(X >= k): McKay's where k is right of the mean, 0 where k > n, else 0 and 1."""
+    ours = (k >= 1) & (k <= n) & (k >= n * p) & (spread > NARROWEST)
     j = np.where(ours, k, n)
     scale = np.where(ours, spread, 1.0)
     x = np.where(ours, (j - n * p) / scale, 1.0)

@@ -1,7 +1,7 @@
 """The scan for n against scipy's binomial distribution on a grid of 2000 points; two workers against one. One run.
 
-The grid takes the table of every n, the covering run at each p, two tails, and for the assurance one sum of points. It is
-run for every 40th n and counted forty times; both sides find worst coverage and assurance of the same methods. The
+The grid takes the table of every n, the covering run at each p, two tails, and for the assurance one sum of points. It
+is run for every 40th n and counted forty times; both sides find worst coverage and assurance of the same methods. The
 limits are computed by the same functions on both sides, so the ratio is also given without their time.
 """
 
@@ -18,8 +18,10 @@ from coverage_lab.intervals import CATALOGUE
 from coverage_lab.sizing import scan as scanning
 from coverage_lab.sizing.scan import Asked, scan, scanned
 
-CLOSED = ("wilson", "agresti-coull", "plus-four", "wilson-cc", "arcsine", "logit", "logit-half", "cloglog", "wald-cc", "wald")
-METHODS = (*CLOSED, "clopper-pearson", "jeffreys", "mid-p")
+METHODS = (
+    *("wilson", "agresti-coull", "plus-four", "wilson-cc", "arcsine", "logit", "logit-half", "cloglog", "wald-cc"),
+    *("wald", "clopper-pearson", "jeffreys", "mid-p"),
+)
 SIZES = np.arange(10, 2001)
 STEP = 40
 LOW, HIGH, P, HALF_WIDTH = 0.01, 0.1, 0.05, 0.02

@@ -21,9 +21,9 @@ from coverage_lab.sizing.search import first_and_safe
 SIZES = np.array([1, 2, 3, 7, 20, 41, 60, 118, 250, 251, 400])
 
 
-def question(low, high, expected=None, *, half_width=0.05, confidence=0.95, side="two-sided", prior=(1.0, 1.0)) -> Asked:
+def question(low, high, expected=None, *, confidence=0.95, side="two-sided", prior=(1.0, 1.0)) -> Asked:
     middle = expected if expected is not None else (low + high) / 2
-    return Asked(low, high, prior, middle, half_width, side, tail_of(confidence, side))
+    return Asked(low, high, prior, middle, 0.05, side, tail_of(confidence, side))
 
 
 def engine_figures(method: Method, asking: Asked, n: int) -> dict[str, float]:
