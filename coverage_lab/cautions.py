@@ -64,8 +64,8 @@ def _outside(plan: Plan, methods: pd.DataFrame, verdict: Verdict) -> list[str]:
     everywhere = row["everywhere_minimum_coverage"]
     worst = f"; over all proportions its coverage can fall to {percent(everywhere, 'down')}" if everywhere > 0 else ""
     return [
-        f"The range {claim} is the plan's claim, not a finding. The {row['label']} meets the standard for true proportions from "
-        f"{percent(low, 'up')} to {percent(high, 'down')}{worst}."
+        f"The range {claim} is the plan's claim, not a finding. The {row['label']} meets the standard for true "
+        f"proportions from {percent(low, 'up')} to {percent(high, 'down')}{worst}."
     ]
 
 

@@ -16,17 +16,19 @@ def rounded(value: float, places: int, towards: Towards = "nearest") -> Decimal:
     return Decimal(repr(float(value))).quantize(Decimal(1).scaleb(-places), context=context)
 
 
-def percent(share: float, towards: Towards = "nearest", places: int | None = None) -> str:
+def percent(share: float, towards: Towards = "nearest", places: int | None = None, fixed: bool = False) -> str:
     """A share in percent as a person writes it: 0.9342 -> '93.4 %', 0.0005 -> '0.05 %', 0.999995 -> '99.9995 %'.
 
     Without `places`, one decimal, or as many as two significant digits need of the share or of what it lacks to 1.
+    fixed: keep all decimals, as a column of figures wants them.
     """
     hundred = (Decimal(repr(float(share))) * 100).quantize(_NOISE)
     if places is None:
         nearest_end = min(abs(hundred), abs(100 - hundred))
         places = 1 if nearest_end == 0 else max(1, 1 - nearest_end.adjusted())
     context = Context(prec=60, rounding=_MODES[towards])
-    return f"{_plain(hundred.quantize(Decimal(1).scaleb(-min(places, 12)), context=context))} %"
+    shown = hundred.quantize(Decimal(1).scaleb(-min(places, 12)), context=context)
+    return f"{shown:f} %" if fixed else f"{_plain(shown)} %"
 
 
 def proportion(value: float, towards: Towards = "nearest", significant: int = 4) -> str:

@@ -116,14 +116,18 @@ def provenance(plan: Plan) -> dict[str, Any]:
     }
 
 
-def write_report(audit: Audit, folder: str | Path, *, overwrite: bool = False) -> Path:
+def write_report(
+    audit: Audit, folder: str | Path, *, overwrite: bool = False, progress: Progress | None = None
+) -> Path:
     """Write the report folder and return the path of its page.
+
+    progress: called with what is being done and the share that is done.
 
     Raises:
         InputFault: the folder holds another plan's report, or files that are no report, and `overwrite` is not set.
         OSError: the folder cannot be written; nothing half-written is left.
     """
-    return write_folder(audit, Path(folder), overwrite=overwrite)
+    return write_folder(audit, Path(folder), overwrite=overwrite, progress=progress)
 
 
 def interval(

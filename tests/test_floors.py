@@ -7,7 +7,7 @@ import pytest
 
 PACKAGE = Path(__file__).parents[1] / "coverage_lab"
 
-GROUND = {"records", "records_sizing", "checks", "probability", "probability_finite", "rounding"}
+GROUND = {"records", "records_sizing", "checks", "probability", "probability_finite", "rounding", "sentences"}
 CATALOGUES = {"intervals", "designs"}
 ADVICE = {"verdict", "reach", "cautions", "sizing"}
 EDGES = {"plan", "plan_text", "report"}
@@ -21,6 +21,7 @@ ROOMS: dict[str, set[str]] = {
     "probability": {"records"},
     "probability_finite": {"records", "probability"},
     "records_sizing": {"records"},
+    "sentences": {"records", "rounding"},
     # floor 1, catalogues: blind to each other
     "intervals": GROUND,
     "designs": GROUND,

@@ -300,7 +300,10 @@ SIDES_AND_NAMES = st.sampled_from(["two-sided", "upper", "lower"]).flatmap(
     lambda side: st.tuples(
         st.just(side),
         st.lists(
-            st.sampled_from([k for k, m in CATALOGUE.items() if side in m.sides]), min_size=1, max_size=4, unique=True
+            st.sampled_from([k for k, m in CATALOGUE.items() if side in m.sides and m.largest_n is None]),
+            min_size=1,
+            max_size=4,
+            unique=True,
         ),
     )
 )
@@ -325,7 +328,7 @@ def mappings(draw: st.DrawFn) -> dict:
             )
         ),
         "standard": draw(
-            st.sampled_from([{}, {"kind": "guaranteed"}, {"kind": "custom", "worst_miss": 1.7, "mean_miss": 1.05}])
+            st.sampled_from([{}, {"kind": "guaranteed"}, {"kind": "custom", "worst_miss": 1, "mean_miss": 0.75}])
         ),
         "simulation": draw(st.fixed_dictionaries({}, optional={"seed": st.integers(0, 2**63 - 1)})),
         "methods": draw(

@@ -8,6 +8,7 @@ from coverage_lab.cli.audit import audit
 from coverage_lab.cli.door import Door
 from coverage_lab.cli.interval import interval
 from coverage_lab.cli.methods import methods
+from coverage_lab.cli.page import page
 from coverage_lab.cli.plan import plan
 
 __all__ = ["cli", "main"]
@@ -34,7 +35,7 @@ def cli() -> None:
     """
 
 
-for command in (audit, interval, methods, plan):
+for command in (audit, interval, methods, plan, page):
     cli.add_command(command)
 
 

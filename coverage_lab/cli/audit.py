@@ -69,7 +69,7 @@ def audit(
     folder = out if out is not None else Path(f"{name}-report")
     _check_folder(folder, chosen, overwrite)
     done = _computed(chosen, processes, folder, quiet)
-    page, failure = _written(done, folder, overwrite)
+    page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
     if failure is not None:
         raise failure
@@ -138,12 +138,13 @@ def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
             raise OSError(0, f"finished work cannot be kept: {error}", str(keep)) from error
 
 
-def _written(done: "Audit", folder: Path, overwrite: bool) -> tuple[Path | None, OSError | None]:
+def _written(done: "Audit", folder: Path, overwrite: bool, quiet: bool) -> tuple[Path | None, OSError | None]:
     """The report's page; or why it could not be written, after which the answer is still shown."""
     from coverage_lab import study
 
     try:
-        return study.write_report(done, folder, overwrite=overwrite), None
+        with progress(quiet) as report:
+            return study.write_report(done, folder, overwrite=overwrite, progress=report), None
     except OSError as error:
         return None, error
 

@@ -17,7 +17,7 @@ from coverage_lab.records import Measurements, Method, Outcomes, Plan
 NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
 ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
 PLAIN = "wald"  # the formula that everybody knows
-WIDE = 12  # how far on either side of n the worst coverage is shown …
+WIDE = 25  # how far on either side of n the worst coverage is shown …
 WIDE_UP_TO = 2000  # … up to this n; beyond it `NEIGHBOURS`, since every n costs more
 
 WORDS = ("label", "family", "source", "formula", "ends", "faults")

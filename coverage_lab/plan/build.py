@@ -26,7 +26,7 @@ from coverage_lab.plan.schema import (
     StudyTable,
     Table,
 )
-from coverage_lab.records import Method, Outcome, Plan, Side, Simulation, Standard, Study
+from coverage_lab.records import Method, Outcome, Plan, Side, Simulation, Standard, Study, alpha_of
 
 GRID_POINTS = 11
 STANDARDS = {"bradley": (1.5, 1.1), "guaranteed": (1 + 1e-9, 1 + 1e-9)}
@@ -105,6 +105,8 @@ def _beyond_schema(document: Mapping[str, Any], checked: Checked, known: Mapping
     for key in ("only", "prefer"):
         names = _items(document, "methods", key)
         yield from _method_faults(key, names, None if head is None else head.side, known)
+    yield from _unreachable(_items(document, "methods", "only"), checked.find(SampleTable), known)
+    yield from _vacuous(checked.find(StandardTable), head)
     if outcome is not None:
         found = _outcome(outcome)
         yield from _prior_faults(found)
@@ -128,6 +130,29 @@ def _method_faults(key: str, names: list[Any], side: Side | None, known: Mapping
         elif side is not None and side not in known[name].sides:
             can = " or ".join(known[name].sides)
             yield Fault(("methods", key, k), f'a method for side = "{side}"; this one is for {can} only', name)
+
+
+def _unreachable(only: list[Any], sample: SampleTable | None, known: Mapping[str, Method]) -> Iterator[Fault]:
+    """A size for which not one of the methods to be measured can be computed."""
+    reaches = [known[name].largest_n for name in only if isinstance(name, str) and name in known]
+    bounded = [reach for reach in reaches if reach is not None]
+    if sample is None or not reaches or len(bounded) < len(reaches):
+        return
+    beyond = [n for n in _sizes(sample) if n > max(bounded)]
+    if beyond:
+        what = f"a method that can be computed at n = {beyond[0]}; these go up to n = {max(bounded)}"
+        yield Fault(("methods", "only"), what, only)
+
+
+def _vacuous(standard: StandardTable | None, head: Head | None) -> Iterator[Fault]:
+    """A standard of the user's own that no interval could miss."""
+    if standard is None or head is None:
+        return
+    most = 1 / alpha_of(head.confidence)
+    for key in ("worst_miss", "mean_miss"):
+        factor = getattr(standard, key)
+        if factor is not None and factor >= most:
+            yield Fault(("standard", key), f"a number below {most:g}, or every interval would pass", factor)
 
 
 def _prior_faults(outcome: Outcome) -> Iterator[Fault]:

@@ -109,8 +109,10 @@ def load(folder: Path) -> Saved:
     if missing:
         raise InputFault(f"{folder / 'audit.json'}: expected the keys {', '.join(KEYS)}; {', '.join(missing)} missing")
     columns = {"methods": METHODS, "cells": CELLS, "curve": CURVE, "steady": STEADY, "interval-table": TABLE}
-    tables = [_read_csv(folder / f"{name}.csv", wanted) for name, wanted in columns.items()]
-    return Saved(document, *tables, word_file=(folder / WORD_FILE).is_file())
+    methods, cells, curve, steady, table = (
+        _read_csv(folder / f"{name}.csv", wanted) for name, wanted in columns.items()
+    )
+    return Saved(document, methods, cells, curve, steady, table, (folder / WORD_FILE).is_file())
 
 
 def check_target(folder: Path, plan_document: Mapping[str, Any], overwrite: bool) -> None:

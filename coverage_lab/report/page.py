@@ -15,7 +15,7 @@ from matplotlib.figure import Figure
 from PIL import Image
 
 from coverage_lab.records import Audit
-from coverage_lab.report import captions, figures, figures_coverage
+from coverage_lab.report import captions, figures, figures_coverage, figures_steady
 from coverage_lab.report.folder import PAGE, WORD_FILE, Saved, check_target, load, write_data
 from coverage_lab.report.staging import staged
 from coverage_lab.report.style import house_style
@@ -25,6 +25,8 @@ from coverage_lab.report.words import sizes
 FILE_DPI = 300
 PAGE_DPI = 180  # 1080 pixels for 6 inches: sharp at the page's width on a dense screen
 COLOURS = 64
+
+Progress = Callable[[str, float], None]
 SIGNED = re.compile(r"(?<=\d) %")
 EQUALS = re.compile(r"\b([np]) = (\d)")
 
@@ -35,6 +37,10 @@ def _measured(saved: Saved) -> bool:
 
 def _several(saved: Saved) -> bool:
     return _measured(saved) and len(sizes(saved.document)) > 1
+
+
+def _beside(saved: Saved) -> bool:
+    return _measured(saved) and bool(figures_steady.sizes_beside(saved))
 
 
 def _checked(saved: Saved) -> bool:
@@ -59,6 +65,7 @@ class Picture:
 PICTURES = (
     Picture("coverage", figures_coverage.coverage, captions.coverage),
     Picture("coverage-by-n", figures_coverage.coverage_by_n, captions.coverage_by_n, _several),
+    Picture("worst-by-n", figures_steady.saw, captions.saw, _beside),
     Picture("extremes", figures.extremes, captions.extremes),
     Picture("width", figures.width, captions.width),
     Picture("misses", figures.misses, captions.misses),
@@ -79,8 +86,10 @@ class Shown:
     alt: str
 
 
-def write_report(audit: Audit, folder: Path, *, overwrite: bool = False) -> Path:
+def write_report(audit: Audit, folder: Path, *, overwrite: bool = False, progress: Progress | None = None) -> Path:
     """Save the audit, draw its figures, write its page: all of it or nothing. The path of the page.
+
+    progress: called with what is being done and the share that is done.
 
     Raises:
         InputFault: see `folder.check_target`.
@@ -89,11 +98,11 @@ def write_report(audit: Audit, folder: Path, *, overwrite: bool = False) -> Path
     check_target(folder, audit.plan.document, overwrite)
     with staged(folder, [*(picture.file for picture in PICTURES), WORD_FILE]) as stage:
         write_data(audit, stage)
-        _write_page(load(stage), stage)
+        _write_page(load(stage), stage, progress)
     return folder / PAGE
 
 
-def write(folder: Path) -> Path:
+def write(folder: Path, progress: Progress | None = None) -> Path:
     """Make figures and page again from the folder's saved files; the path of the page.
 
     Raises:
@@ -102,19 +111,21 @@ def write(folder: Path) -> Path:
     """
     saved = load(folder)
     with staged(folder, [picture.file for picture in PICTURES]) as stage:
-        _write_page(saved, stage)
+        _write_page(saved, stage, progress)
     return folder / PAGE
 
 
-def _write_page(saved: Saved, into: Path) -> None:
+def _write_page(saved: Saved, into: Path, progress: Progress | None) -> None:
     """Figures and page into an existing directory."""
     (into / "figures").mkdir()
     shown: dict[str, Shown] = {}
-    for picture in PICTURES:
-        if picture.wanted(saved):
-            large, small = images(picture.draw, saved)
-            (into / picture.file).write_bytes(large)
-            shown[picture.name] = _shown(picture, saved, small, len(shown) + 1)
+    wanted = [picture for picture in PICTURES if picture.wanted(saved)]
+    for number, picture in enumerate(wanted, start=1):
+        large, small = images(picture.draw, saved)
+        (into / picture.file).write_bytes(large)
+        shown[picture.name] = _shown(picture, saved, small, number)
+        if progress is not None:
+            progress("drawing", number / len(wanted))
     (into / PAGE).write_bytes(html(saved, shown).encode("utf-8"))
 
 

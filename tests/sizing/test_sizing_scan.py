@@ -55,6 +55,26 @@ def test_equals_the_engine_for_tables_with_shared_end_points(name: str) -> None:
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-10)
 
 
+def test_limits_that_are_one_up_to_rounding_leave_no_false_minimum() -> None:
+    """Blaker's limits of different counts coincide; between two copies of one limit coverage would seem to be .9379."""
+    asking = question(0.02, 0.5)
+    found = scan(asking, [scanned(CATALOGUE["blaker"], coverage=True)], np.array([250]))
+    wanted = engine_figures(CATALOGUE["blaker"], asking, 250)["worst_miss"]
+    assert found["worst_miss"][0] == pytest.approx(wanted, rel=1e-10)
+    assert found["worst_miss"][0] < 0.0501
+
+
+@pytest.mark.parametrize(("name", "n"), [("wald", 60), ("wald-cc", 150), ("poisson-exact", 200)])
+def test_where_the_narrow_window_is_too_narrow_the_whole_one_is_taken(name: str, n: int) -> None:
+    """For few events plus-or-minus reaches so little that counts far outside the narrow window still cover."""
+    for low, high in ((0.0005, 0.005), (0.3, 0.7)):
+        asking = question(low, high, confidence=0.99)
+        found = scan(asking, [scanned(CATALOGUE[name], coverage=True)], np.array([n]))
+        wanted = engine_figures(CATALOGUE[name], asking, n)
+        assert found["worst_miss"][0] == pytest.approx(wanted["worst_miss"], rel=1e-11)
+        assert found["mean_miss"][0] == pytest.approx(wanted["mean_miss"], rel=1e-9)
+
+
 @pytest.mark.parametrize("confidence", [0.8, 0.99, 0.9999])
 @pytest.mark.parametrize("name", ["logit", "logit-half", "cloglog", "wilson"])
 def test_limits_that_turn_back_are_left_to_the_engine(name: str, confidence: float) -> None:

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from coverage_lab.designs import Simple
@@ -14,6 +14,7 @@ from coverage_lab.sizing.scan import Asked, scan, scanned
 from coverage_lab.sizing.tails import outside_bounds
 
 
+@settings(deadline=None)
 @given(
     n=st.integers(1, 5000),
     p=st.one_of(st.floats(1e-9, 1 - 1e-9), st.sampled_from([0.0, 1.0, 0.5, 1e-300])),
