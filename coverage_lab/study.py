@@ -66,7 +66,9 @@ def audit(
         InputFault: a method of your own returned another shape, a NaN, or lower > upper.
     """
     if extra:
-        plan = replace(plan, methods=(*plan.methods, *own_methods(extra)))
+        known = {method.name for method in plan.methods}
+        added = tuple(method for method in own_methods(extra) if method.name not in known)
+        plan = replace(plan, methods=(*plan.methods, *added))
     measured = measure(plan, workers, progress, keep)
     methods = verdict.judged(measured)
     by_n = tuple(Decided(**vars(verdict.decide(measured, methods, n))) for n in plan.sizes)
@@ -162,16 +164,16 @@ def minimum_coverage(
         InputFault: an unknown method, or one that does not apply; an unusable n, range, confidence or side.
     """
     faults = _question_faults(method, confidence, side)
-    low, high = between
     if not (_whole(n) and n >= 1):
         faults.append(expected("a whole number of at least 1", n, "n"))
-    if not 0 <= low <= high <= 1:
+    if not _range(between):
         faults.append(expected("0 <= low <= high <= 1", between, "between"))
     if faults:
         raise InputFault(*faults)
     chosen = _applicable(method, int(n), side)
+    low, high = (float(end) for end in between)
     parts = listed(Simple(), [chosen], int(n), (low, high), side, tail_of(confidence, side))
-    return minimum_of(parts, 0, float(low), float(high))
+    return minimum_of(parts, 0, low, high)
 
 
 def _question_faults(method: str, confidence: float, side: str) -> list[str]:
@@ -193,6 +195,15 @@ def _applicable(name: str, n: int, side: Side) -> Method:
     if reason is not None:
         raise InputFault(f"method {name!r} does not apply: {reason}")
     return method
+
+
+def _range(ends: object) -> bool:
+    """Whether these are two numbers with 0 <= low <= high <= 1."""
+    try:
+        low, high = np.asarray(ends, dtype=float)
+    except (TypeError, ValueError):
+        return False
+    return bool(0 <= low <= high <= 1)
 
 
 def _whole(value: object) -> bool:

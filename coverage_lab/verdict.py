@@ -231,7 +231,8 @@ def _why_not(plan: Plan, n: int, here: Mapping[str, Row], listed: Sequence[str],
 def _standard(plan: Plan) -> str:
     """The standard in numbers."""
     worst, mean = thresholds(plan)
-    return f"at least {percent(1 - worst)} everywhere in the planned range and {percent(1 - mean)} on average"
+    least, average = (max(0.0, 1 - miss) for miss in (worst, mean))
+    return f"at least {percent(least)} everywhere in the planned range and {percent(average)} on average"
 
 
 def _labels(here: Mapping[str, Row], listed: Sequence[str]) -> str:
