@@ -71,7 +71,7 @@ def test_a_plan_made_with_the_rule_measures_it_once() -> None:
 
 @pytest.mark.parametrize("between", [(0.2, "x"), (0.5, 0.1), 0.3, (0.1, 0.2, 0.3), (-1, 0.5), (float("nan"), 0.5)])
 def test_an_unusable_range_is_one_line(between) -> None:
-    with pytest.raises(cl.InputFault, match="^between = "):
+    with pytest.raises(cl.InputFault, match=r"^between = "):
         cl.minimum_coverage("wilson", 20, between)
 
 
