@@ -275,7 +275,10 @@ class Measurements:
 
 @dataclass(frozen=True)
 class Verdict:
-    """The recommendation for one n, with everything that its sentence says."""
+    """The recommendation for one n, with everything that its sentence says.
+
+    precision: what the named method gives of the plan's [precision], and whether it meets it; None where none is asked.
+    """
 
     n: int
     status: Literal["recommended", "none", "undecided"]
@@ -289,6 +292,7 @@ class Verdict:
     holds_on: tuple[float, float] | None
     balance: str | None
     bounds_at: tuple[Mapping[str, Any], ...]
+    precision: Mapping[str, Any] | None = None
 
 
 @dataclass(frozen=True)

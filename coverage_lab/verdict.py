@@ -114,12 +114,15 @@ def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
 
 
 def overall(by_n: Sequence[Verdict]) -> Verdict:
-    """The verdict at the smallest n with a recommendation; without one, an undecided one, else the last."""
-    for status in ("recommended", "undecided"):
-        for verdict in sorted(by_n, key=lambda item: item.n):
-            if verdict.status == status:
-                return verdict
-    return max(by_n, key=lambda item: item.n)
+    """The verdict at the smallest n whose recommendation is as precise as the plan asks; else at the smallest with one.
+
+    Without any recommendation, an undecided one, else the last.
+    """
+    ordered = sorted(by_n, key=lambda item: item.n)
+    named = [verdict for verdict in ordered if verdict.status == "recommended"]
+    precise = [verdict for verdict in named if verdict.precision is None or verdict.precision["meets"]]
+    undecided = [verdict for verdict in ordered if verdict.status == "undecided"]
+    return next(iter([*precise, *named, *undecided]), ordered[-1])
 
 
 def _holds_up(here: Mapping[str, Row], steady: Steady, name: str) -> bool:

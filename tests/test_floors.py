@@ -9,7 +9,7 @@ PACKAGE = Path(__file__).parents[1] / "coverage_lab"
 
 GROUND = {"records", "records_sizing", "checks", "probability", "probability_finite", "rounding", "sentences"}
 CATALOGUES = {"intervals", "designs"}
-ADVICE = {"verdict", "reach", "cautions", "sizing"}
+ADVICE = {"verdict", "reach", "cautions", "sizing", "precision"}
 EDGES = {"plan", "plan_text", "report"}
 
 ROOMS: dict[str, set[str]] = {
@@ -32,6 +32,7 @@ ROOMS: dict[str, set[str]] = {
     "cautions": GROUND,
     "verdict": GROUND | {"engine", "reach"},
     "sizing": GROUND | CATALOGUES | {"engine", "reach", "verdict"},
+    "precision": GROUND | {"sizing"},
     # floor 4, edges: words in, pages out
     "plan": GROUND | CATALOGUES | {"plan_text"},
     "report": GROUND | {"plan_text"},

@@ -28,28 +28,25 @@ SIZE = "expected a whole number from 1 to 10000000"
 SHARE = "expected a number strictly between 0 and 1"
 RANGE = "expected [low, high] with 0 <= low <= high <= 1, not [0, 0] or [1, 1]"
 REPLICATES = "expected a whole number from 1 to 1000000000"
-TOP = "title, confidence, side, study, outcome, sample, standard, design, simulation, methods"
+TOP = (
+    "title, confidence, side, study, outcome, sample, precision, rare, decision, standard, design, simulation, methods"
+)
 
 # What is replaced in the good plan, by what, and the fault without the file's name.
 CHANGES = [
     # unknown keys
     ("confidence", "confidance", """:2: unknown key 'confidance': did you mean "confidence"?"""),
-    ("n = 250", "n = 250\nm = 3", ":12: [sample]: unknown key 'm': must be one of n, candidates"),
-    ("n = 250", "n = 250\nhorizon = 5000", ":12: [sample]: unknown key 'horizon': must be one of n, candidates"),
+    ("n = 250", "n = 250\nm = 3", ":12: [sample]: unknown key 'm': must be one of n, candidates, horizon"),
+    ("n = 250", "n = 250\nhorizn = 5000", """:12: [sample]: unknown key 'horizn': did you mean "horizon"?"""),
     ("n = 250", "n = 250\nside = 'upper'", ":12: [sample]: unknown key 'side': it belongs above the first table"),
     ("title", "replicates = 5\ntitle", ":1: unknown key 'replicates': it belongs in [simulation]"),
     ("title", "xyz = 5\ntitle", f":1: unknown key 'xyz': must be one of {TOP}"),
     ("[simulation]", "[simulations]", """:13: unknown key 'simulations': did you mean "simulation"?"""),
+    ("[simulation]", "[precison]\n[simulation]", """:13: unknown key 'precison': did you mean "precision"?"""),
     (
         "[simulation]",
-        "[precision]\nhalf_width = 0.02\n[simulation]",
-        f":13: unknown key 'precision': must be one of {TOP}",
-    ),
-    ("[simulation]", "[rare]\nlimit = 0.05\n[simulation]", f":13: unknown key 'rare': must be one of {TOP}"),
-    (
-        "[simulation]",
-        "[design]\npopulation = 9\n[simulation]",
-        ":14: [design]: unknown key 'population': must be one of kind",
+        "[design]\nicc = 0.1\n[simulation]",
+        ":14: [design]: unknown key 'icc': must be one of kind, population, design_effect, cluster_size, loss",
     ),
     # wrong types
     ('"A study"', "12", ":1: title = 12: expected one line of text"),
@@ -101,7 +98,6 @@ CHANGES = [
     ("250", "10000001", f":11: [sample] n = 10000001: {SIZE}"),
     ("250", "nan", f":11: [sample] n = nan: {SIZE}"),
     ("250", "true", f":11: [sample] n = True: {SIZE}"),
-    ("n = 250", "", ":10: [sample]: expected the key n or candidates, came nothing"),
     (
         "n = 250",
         "n = 250\ncandidates = [9]",
@@ -293,7 +289,7 @@ prefer = ["blakr"]
         f":5: [outcome] range = [0.05, 0.005]: {RANGE}",
         f":7: [sample] n = 12.5: {SIZE}",
         ":9: [design] kind: unknown design 'finite': must be one of simple",
-        ":10: [design]: unknown key 'icc': must be one of kind",
+        ":10: [design]: unknown key 'icc': must be one of kind, population, design_effect, cluster_size, loss",
         f":12: [simulation] replicates = -1: {REPLICATES}",
         ":13: [simulation] grid, item 2 = nan: expected a proportion within the planned range",
         ":16: [methods] only, item 2 = 4: expected the name of a method",
@@ -305,12 +301,25 @@ prefer = ["blakr"]
 def test_what_is_missing(tmp_path: Path) -> None:
     path = tmp_path / "plan.toml"
     path.write_text('title = "A study"\n')
-    outcome, sample = "[outcome]: expected the key range or expected, came nothing", "[sample]: expected the key n or "
-    assert faults_of(path) == [f": {outcome}", f": {sample}candidates, came nothing"]
+    outcome, sample = "[outcome]: expected the key range or expected", "[sample]: expected the key n or candidates"
+    assert faults_of(path) == [f": {outcome}, or [rare] limit, or [decision] goal"]
     assert faults_of(path, overrides={}) == [
-        f": {outcome}; or give --range or --expected",
-        f": {sample}candidates, came nothing; or give --n",
+        f": {outcome}, or [rare] limit, or [decision] goal; or give --range, --expected, --rule-out or --goal"
     ]
+    assert faults_of(path, audited=True) == [
+        f": {outcome}, which an audit needs",
+        f": {sample}, which an audit needs",
+    ]
+    assert faults_of(path, audited=True, overrides={}) == [
+        f": {outcome}, which an audit needs; or give --range or --expected",
+        f": {sample}, which an audit needs; or give --n",
+    ]
+
+
+def test_an_audit_needs_n(tmp_path: Path) -> None:
+    path = changed(tmp_path, ("n = 250", "horizon = 900"))
+    assert read_plan(path).sizes == ()
+    assert faults_of(path, audited=True) == [":10: [sample]: expected the key n or candidates, which an audit needs"]
 
 
 @pytest.mark.parametrize(

@@ -18,21 +18,25 @@ Examples:
 @click.argument("folder", type=click.Path(path_type=Path))
 @options.quiet
 def page(folder: Path, quiet: bool) -> None:
-    """Make the figures and report.html of FOLDER again from its audit.json and CSV files; nothing is computed anew.
+    """Make the figures and report.html of FOLDER again from its saved files alone; nothing is computed anew.
+
+    FOLDER holds the report of an audit or of a sample size.
 
     The same files and the same version of the libraries give the same page, byte for byte.
     """
-    from coverage_lab.report import rewrite
+    from coverage_lab.report import rewrite, rewrite_sizing
 
-    if not (folder / "audit.json").is_file():
-        raise InputFault(f"{folder}: expected the report folder of an audit, but it holds no audit.json")
+    kinds = {"audit.json": rewrite, "sample-size.json": rewrite_sizing}
+    again = next((function for name, function in kinds.items() if (folder / name).is_file()), None)
+    if again is None:
+        raise InputFault(f"{folder}: expected a report folder, but it holds neither {' nor '.join(kinds)}")
     with progress(quiet) as report:
         try:
-            written = rewrite(folder, report)
+            written = again(folder, report)
         except (KeyError, IndexError, TypeError, AttributeError) as error:
             raise InputFault(
-                f"{folder}: expected the saved files of one audit, but they are damaged or do not belong together "
-                f"({type(error).__name__}: {error}); run the audit again"
+                f"{folder}: expected the saved files of one report, but they are damaged or do not belong together "
+                f"({type(error).__name__}: {error}); run the command again that made it"
             ) from None
     if not quiet:
         click.echo(written)

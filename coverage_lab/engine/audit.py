@@ -17,7 +17,7 @@ from coverage_lab.records import Measurements, Method, Outcomes, Plan
 NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
 ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
 PLAIN = "wald"  # the formula that everybody knows
-WIDE = 25  # how far on either side of n the worst coverage is shown …
+WIDE = 25  # how far on either side of n the worst coverage is shown, but never further than a third of n …
 WIDE_UP_TO = 2000  # … up to this n; beyond it `NEIGHBOURS`, since every n costs more
 
 WORDS = ("label", "family", "source", "formula", "ends", "faults")
@@ -76,7 +76,8 @@ def saw(plan: Plan) -> pd.DataFrame:
     names = {PLAIN, *(method.name for method in plan.prefer)}
     rows: list[dict[str, object]] = []
     for planned in plan.sizes:
-        rows += _beside(plan, planned, WIDE if planned <= WIDE_UP_TO else NEIGHBOURS, names)
+        reach = min(WIDE, planned // 3) if planned <= WIDE_UP_TO else 0
+        rows += _beside(plan, planned, max(reach, NEIGHBOURS), names)
     return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss"])
 
 

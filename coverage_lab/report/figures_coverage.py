@@ -147,7 +147,12 @@ def _points(axes: Axes, saved: Saved, n: int, styles: Mapping[str, Look]) -> Non
 def label_lines(axes: Axes, document: Document, marks: Sequence[Mark], panel: float) -> None:
     """What each line and each level is, beside its right end, no label over another; `panel` is the height, inches."""
     right = float(axes.get_xlim()[1])
-    listed = [*marks, *((words, right, value, SOFT, "normal") for words, value in level_lines(document))]
+    levels = ((words, right, value, SOFT, "normal") for words, value in level_lines(document))
+    label_ends(axes, [*marks, *levels], panel)
+
+
+def label_ends(axes: Axes, listed: Sequence[Mark], panel: float) -> None:
+    """Words beside the right ends of lines, no label over another; `panel` is the height in inches."""
     heights = [axes.transAxes.inverted().transform(axes.transData.transform((x, y)))[1] for _, x, y, _, _ in listed]
     places = spread(heights, LABEL_GAP / panel, 0.05, 0.96)
     for (words, x, y, colour, weight), height in zip(listed, places, strict=True):

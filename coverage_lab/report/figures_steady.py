@@ -27,7 +27,7 @@ def saw(saved: Saved) -> Figure:
     height = 0.98 + PANEL * len(shown) + 0.25 * (len(shown) - 1) + 0.12
     left = 0.3 + 0.075 * len(share(1 - document["alpha"] / 2))
     n = ", ".join(count(size) for size in shown)
-    about = f"n = {n} and its neighbours · {level(document)} · enumerated\n"
+    about = f"n = {n} and neighbours · {level(document)} · enumerated\n"
     about += f"planned range {range_words(*planned_range(document))} · vertical line: planned n"
     figure = canvas("Worst interval coverage against n", about, height, (left, LABELS, 0.5, 0.98))
     grid = figure.subplots(len(shown), 1, squeeze=False, gridspec_kw={"hspace": 0.35})

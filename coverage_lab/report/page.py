@@ -4,10 +4,11 @@ import base64
 import hashlib
 import io
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
 from pathlib import Path
+from typing import Any, TypeVar
 
 import jinja2
 from markupsafe import Markup
@@ -27,6 +28,7 @@ PAGE_DPI = 180  # 1080 pixels for 6 inches: sharp at the page's width on a dense
 COLOURS = 64
 
 Progress = Callable[[str, float], None]
+Source = TypeVar("Source")  # the saved files of a report
 SIGNED = re.compile(r"(?<=\d) %")
 EQUALS = re.compile(r"\b([np]) = (\d)")
 
@@ -123,13 +125,13 @@ def _write_page(saved: Saved, into: Path, progress: Progress | None) -> None:
     for number, picture in enumerate(wanted, start=1):
         large, small = images(picture.draw, saved)
         (into / picture.file).write_bytes(large)
-        shown[picture.name] = _shown(picture, saved, small, number)
+        shown[picture.name] = embedded(number, picture.file, small, picture.words(saved))
         if progress is not None:
             progress("drawing", number / len(wanted))
     (into / PAGE).write_bytes(html(saved, shown).encode("utf-8"))
 
 
-def images(draw: Callable[[Saved], Figure], saved: Saved) -> tuple[bytes, bytes]:
+def images(draw: Callable[[Source], Figure], saved: Source) -> tuple[bytes, bytes]:
     """The figure as a file of 300 dpi and as a small one of 64 colours for the page; the same bytes every time."""
     with house_style():
         figure = draw(saved)
@@ -147,25 +149,25 @@ def _png(figure: Figure, dpi: int) -> bytes:
     return buffer.getvalue()
 
 
-def _shown(picture: Picture, saved: Saved, image: bytes, number: int) -> Shown:
-    caption, alt = picture.words(saved)
+def embedded(number: int, file: str, image: bytes, words: captions.Words) -> Shown:
+    """A small image as the page carries it."""
+    caption, alt = words
     width, height = Image.open(io.BytesIO(image)).size
     source = f"data:image/png;base64,{base64.b64encode(image).decode('ascii')}"
-    return Shown(number, picture.file, source, width, height, caption, alt)
+    return Shown(number, file, source, width, height, caption, alt)
 
 
 def html(saved: Saved, shown: dict[str, Shown]) -> str:
-    """The page as one file: style and script inline under a policy that lets nothing else run or load."""
-    environment = _environment()
-    style, script = (_asset(name) for name in ("page.css", "page.js"))
-    policy = (
-        f"default-src 'none'; img-src data:; style-src '{_digest(style)}'; script-src '{_digest(script)}'; "
-        "base-uri 'none'; form-action 'none'"
-    )
-    content = page_content(saved)
-    return environment.get_template("page.html").render(
-        **content, pictures=shown, style=style, script=script, policy=policy
-    )
+    """The page as one file."""
+    return sheet("page.html", {**page_content(saved), "pictures": shown}, ["page.css"], ["page.js"])
+
+
+def sheet(template: str, content: Mapping[str, Any], styles: Sequence[str], scripts: Sequence[str] = ()) -> str:
+    """A page with style and script inline, under a policy that lets nothing else run or load."""
+    style, script = ("".join(_asset(name) for name in names) for names in (styles, scripts))
+    allowed = f"style-src '{_digest(style)}'; " + (f"script-src '{_digest(script)}'; " if scripts else "")
+    policy = f"default-src 'none'; img-src data:; {allowed}base-uri 'none'; form-action 'none'"
+    return _environment().get_template(template).render(**content, style=style, script=script, policy=policy)
 
 
 @cache

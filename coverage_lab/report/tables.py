@@ -134,7 +134,7 @@ def instead(document: Document) -> Table:
         mark = "chief" if row["method"] == main else ""
         head = Cell(f"{row['label']}, {role}" if role else row["label"], None, mark)
         rows.append((head, *_compared(row, reference, written)))
-    titles = ("Worst coverage", "at p", "Mean coverage", SHORT_WIDTHS[document["side"]].capitalize(), "Compared")
+    titles = ("Worst coverage", "at p", "Mean coverage", SHORT_WIDTHS[document["side"]].capitalize(), "Width compared")
     heads = (Column("Method", numeric=False), *map(Column, titles), Column("Meets the standard", numeric=False))
     return Table("instead", "What it delivers, and what others would have delivered instead", heads, tuple(rows))
 

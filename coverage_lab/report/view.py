@@ -209,6 +209,8 @@ def outcome_words(saved: Saved) -> str:
     if saved.table.empty:
         return "The named method needs more than the events count, so there is no table of intervals."
     which = f"{box.serves(saved)}. Limits are rounded outward."
+    if len(saved.table) <= verdict["n"]:
+        which += " Only counts with a probability over 1e-12 somewhere in the planned range are listed."
     if len(saved.table) > tables.MOST_ROWS + 1:
         return f"{which} The table has {count(len(saved.table))} rows, too long to print here: it is in the file."
     return which

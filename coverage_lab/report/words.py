@@ -180,16 +180,32 @@ def simulation_words(row: Row, document: Document) -> str | None:
     drawn = row["simulated"]
     if drawn["coverage_min"] is None:
         return None
+    grid = sorted(document["plan"]["simulation"]["grid"])
+    over = f" ({range_words(grid[0], grid[-1])})" if len(grid) > 1 else ""
     studies = (
-        f"In {count(drawn['replicates'])} simulated studies at {each(len(document['plan']['simulation']['grid']))}"
+        f"In {count(drawn['replicates'])} simulated studies at {each(len(grid))}{over}, each a "
+        f"{document['plan']['design']['kind']} random sample of n = {count(row['n'])}, "
     )
+    what = f"{row['label']} {NOUNS[document['side']]}"
     if drawn["coverage_min"] == 1:
-        return f"{studies} every interval contained the true proportion."
+        return f"{studies}every {what} was right."
     return (
-        f"{studies} coverage was {percent(drawn['coverage_min'])} at its lowest "
-        f"(p = {place(drawn['coverage_min_at'])}) and {percent(drawn['coverage_mean'])} on average "
-        f"(Monte Carlo standard error at most {points(drawn['standard_error'])})."
+        f"{studies}the coverage of the {what} was {percent(drawn['coverage_min'])} at its lowest "
+        f"(p = {place(drawn['coverage_min_at'])}) and {percent(drawn['coverage_mean'])} on average (Monte Carlo "
+        f"standard error at most {points(drawn['standard_error'])}).{_missed(row, grid)}"
     )
+
+
+def _missed(row: Row, grid: list[float]) -> str:
+    """Why the simulation did not meet the exact minimum, when it lies between the proportions that were simulated."""
+    known, at = row["minimum_is"] == "certified", row["minimum_at"]
+    if (
+        not known
+        or row["simulated"]["coverage_min"] <= row["minimum_coverage"]
+        or any(abs(p - at) < 1e-9 for p in grid)
+    ):
+        return ""
+    return f" The exact minimum, at p = {place(at)}, is lower: it lies between the simulated proportions."
 
 
 def each(cells: int) -> str:

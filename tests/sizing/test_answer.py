@@ -259,7 +259,7 @@ FAULTS = [
     ({"rare": Rare(0.01, (0,), 0.01)}, {}, "rare.hoped_for = 0.01: expected a rate below rare.limit = 0.01"),
     ({"rare": Rare(1.0, (0,))}, {}, f"rare.limit = 1.0: {SHARE}"),
     ({"rare": Rare(0.01, (-1,))}, {}, f"rare.events = -1: {WHOLE} 0"),
-    ({"rare": Rare(0.01, (12,)), "sizes": (10,)}, {}, "rare.events = 12: expected fewer than sample.n = 10"),
+    ({"rare": Rare(0.01, (10,)), "sizes": (10,)}, {}, "rare.events = 10: expected fewer than sample.n = 10"),
     (
         {"rare": Rare(0.01, (1,))},
         {"population": 100},
