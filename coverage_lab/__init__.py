@@ -5,6 +5,7 @@
     plan = cl.read_plan("plan.toml")
     audit = cl.audit(plan)
     cl.write_report(audit, "plan-report")
+    cl.sample_size(plan).verdict.sentence
 
 Names are handed on when they are first asked for, so that importing the package loads no numerical library.
 """
@@ -20,7 +21,9 @@ if TYPE_CHECKING:
     from coverage_lab.study import audit as audit
     from coverage_lab.study import interval as interval
     from coverage_lab.study import minimum_coverage as minimum_coverage
+    from coverage_lab.study import sample_size as sample_size
     from coverage_lab.study import write_report as write_report
+    from coverage_lab.study import write_sizing as write_sizing
 
     __version__: str
 
@@ -31,7 +34,9 @@ _HOMES = {
     "make_plan": "plan",
     "minimum_coverage": "study",
     "read_plan": "plan",
+    "sample_size": "study",
     "write_report": "study",
+    "write_sizing": "study",
 }
 
 __all__ = [
@@ -43,7 +48,9 @@ __all__ = [
     "make_plan",
     "minimum_coverage",
     "read_plan",
+    "sample_size",
     "write_report",
+    "write_sizing",
 ]
 
 

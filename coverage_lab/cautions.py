@@ -3,14 +3,14 @@
 import pandas as pd
 
 from coverage_lab.records import Measurements, Plan, Verdict
-from coverage_lab.rounding import percent, proportion
+from coverage_lab.rounding import percent, proportion, whole
+from coverage_lab.sentences import CONDITIONAL, OF_SIMULATION, OF_ZERO, of_side
 
 ZERO_UNLIKELY = 5.0  # expected events from which zero is rarer than e^-5
 DISAGREEMENT = 1e-3  # cross-check p-values below this are a warning of their own
 
 ALWAYS = (
-    "Every figure is conditional on the planned range and on the sampling model; none says anything about bias: who "
-    "was not reached, what was misclassified, what was lost.",
+    CONDITIONAL,
     "Fix the method, the confidence and the side before data are seen, and report that interval whatever it shows.",
     "These results support, and never replace, qualified statistical review and the rules that apply where the study "
     "is done.",
@@ -22,7 +22,7 @@ def cautions(measured: Measurements, methods: pd.DataFrame, verdict: Verdict) ->
     plan = measured.plan
     found = [*_disagreement(measured), *_too_small(plan, verdict), *_outside(plan, methods, verdict)]
     found += [verdict.balance] if verdict.balance else []
-    return (*found, *_of_side(plan), *_of_zero(plan), *_of_simulation(plan), *ALWAYS)
+    return (*found, of_side(plan.confidence, plan.alpha, plan.side), *_of_zero(plan), *_of_simulation(plan), *ALWAYS)
 
 
 def _disagreement(measured: Measurements) -> list[str]:
@@ -42,11 +42,12 @@ def _too_small(plan: Plan, verdict: Verdict) -> list[str]:
     if small is None:
         return []
     near_one = small["limit"] <= plan.outcome.low
-    events, word = (f"{verdict.n} events in {verdict.n}", "lower") if near_one else ("0 events", "upper")
-    needed = f"; n = {small['n_needed']} would" if small["n_needed"] else ""
+    n = whole(verdict.n)
+    events, word = (f"{n} events in {n}", "lower") if near_one else ("0 events", "upper")
+    needed = f"; n = {whole(small['n_needed'])} would" if small["n_needed"] else ""
     limit = proportion(small["limit"], "down" if near_one else "up")
     return [
-        f"n = {verdict.n} is too small to learn from: even {events} would give the {word} limit {limit} and exclude "
+        f"n = {n} is too small to learn from: even {events} would give the {word} limit {limit} and exclude "
         f"nothing in the planned range{needed}."
     ]
 
@@ -58,43 +59,21 @@ def _outside(plan: Plan, methods: pd.DataFrame, verdict: Verdict) -> list[str]:
     low, high = verdict.holds_on
     row = methods[(methods["n"] == verdict.n) & (methods["method"] == verdict.method)].iloc[0]
     if low <= 0 and high >= 1:
-        return [f"The {row['label']} meets the standard at n = {verdict.n} for every true proportion."]
+        return [f"The {row['label']} meets the standard at n = {whole(verdict.n)} for every true proportion."]
     claim = f"{percent(plan.outcome.low)} to {percent(plan.outcome.high)}"
     everywhere = row["everywhere_minimum_coverage"]
     worst = f"; over all proportions its coverage can fall to {percent(everywhere, 'down')}" if everywhere > 0 else ""
     return [
-        f"The range {claim} is your claim. The {row['label']} meets the standard for true proportions from "
-        f"{percent(low, 'up')} to {percent(high, 'down')}{worst}."
-    ]
-
-
-def _of_side(plan: Plan) -> list[str]:
-    """What a one-sided confidence means beside a two-sided one."""
-    if plan.side == "two-sided":
-        return []
-    matching = percent(1 - 2 * plan.alpha) if plan.alpha < 0.5 else None
-    twin = f" is the matching limit of a two-sided {matching} interval and" if matching else ""
-    return [
-        f"A one-sided {percent(plan.confidence)} bound{twin} spends all of its error on one side; confirmatory work "
-        "often asks for 2.5 % on that side."
+        f"The range {claim} is the plan's claim, not a finding. The {row['label']} meets the standard for true "
+        f"proportions from {percent(low, 'up')} to {percent(high, 'down')}{worst}."
     ]
 
 
 def _of_zero(plan: Plan) -> list[str]:
     """Zero events are likely, and not zero risk."""
-    if min(plan.sizes) * plan.outcome.low > ZERO_UNLIKELY:
-        return []
-    return [
-        "Zero events is not zero risk: it leaves every proportion up to the upper limit open. Do not switch to a "
-        "one-sided bound because the count came out as zero; the side is part of the plan."
-    ]
+    return [] if min(plan.sizes) * plan.outcome.low > ZERO_UNLIKELY else [OF_ZERO]
 
 
 def _of_simulation(plan: Plan) -> list[str]:
     """What a simulated minimum is worth."""
-    if "simulated" not in plan.simulation.routes:
-        return []
-    return [
-        "A simulated minimum over many proportions is biased low, since it picks the unluckiest cell; exact minima are "
-        "stated where they could be computed."
-    ]
+    return [OF_SIMULATION] if "simulated" in plan.simulation.routes else []

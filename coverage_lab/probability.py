@@ -88,13 +88,15 @@ def log_rising(z: ArrayLike, m: ArrayLike) -> Array:
 def betabinomial(x: ArrayLike, n: ArrayLike, a: ArrayLike, b: ArrayLike) -> Array:
     """P(X = x) for X ~ Binomial(n, P), P ~ Beta(a, b); exactly 1/(n+1) for a = b = 1; 0 outside 0..n."""
     x, n, a, b = _floats(x, n, a, b)
+    if np.all(a == 1) and np.all(b == 1):
+        return np.where((x < 0) | (x > n), 0.0, 1 / (n + 1))
     inside = (x > 0) & (x < n)
     saddle = _betabinomial_inside(np.where(inside, x, 1.0), np.where(inside, n, 2.0), a, b)
     near, far = np.where(x <= 0, b, a), np.where(x <= 0, a, b)
     step, shift = np.minimum(n, far), np.maximum(n, far)  # the two may change places: the shorter step loses less
     edge = np.exp(log_rising(near, step) - log_rising(near + shift, step))
-    chance = np.where((a == 1) & (b == 1), 1 / (n + 1), np.where(inside, saddle, edge))
-    return np.where((x < 0) | (x > n), 0.0, chance)
+    uniform = (a == 1) & (b == 1)
+    return np.where((x < 0) | (x > n), 0.0, np.where(uniform, 1 / (n + 1), np.where(inside, saddle, edge)))
 
 
 def _floats(*values: ArrayLike) -> tuple[Array, ...]:

@@ -300,7 +300,10 @@ class Measurements:
 
 @dataclass(frozen=True)
 class Verdict:
-    """The recommendation for one n, with everything that its sentence says."""
+    """The recommendation for one n, with everything that its sentence says.
+
+    precision: what the named method gives of the plan's [precision], and whether it meets it; None where none is asked.
+    """
 
     n: int
     status: Literal["recommended", "none", "undecided"]
@@ -314,17 +317,22 @@ class Verdict:
     holds_on: tuple[float, float] | None
     balance: str | None
     bounds_at: tuple[Mapping[str, Any], ...]
+    precision: Mapping[str, Any] | None = None
 
 
 @dataclass(frozen=True)
 class Audit:
-    """A finished audit: the measurements, the verdicts and where they came from."""
+    """A finished audit: the measurements, the verdicts and where they came from.
+
+    table: the interval for every outcome; steady: worst and mean miss of a few methods at every n around the planned.
+    """
 
     plan: Plan
     methods: pd.DataFrame
     cells: pd.DataFrame
     curve: pd.DataFrame
     table: pd.DataFrame
+    steady: pd.DataFrame
     verdict: Verdict
     by_n: tuple[Verdict, ...]
     cross_check: CrossCheck | None

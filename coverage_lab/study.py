@@ -11,23 +11,41 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
-from coverage_lab import reach, verdict
+from coverage_lab import reach, report, verdict
 from coverage_lab.cautions import cautions
 from coverage_lab.checks import InputFault, expected, unknown
 from coverage_lab.designs import Simple
-from coverage_lab.engine.audit import measure
+from coverage_lab.engine.audit import measure, saw
 from coverage_lab.engine.bounds import evaluate, inapplicable
 from coverage_lab.engine.exact import listed, minimum_of, possible
 from coverage_lab.engine.work import Progress
 from coverage_lab.intervals import CATALOGUE
-from coverage_lab.plan import own_methods
+from coverage_lab.plan import audit_faults, own_methods
 from coverage_lab.plan_text import plan_digest
+from coverage_lab.precision import with_precision
 from coverage_lab.records import SIDES, Audit, Bounds, Interval, Method, Minimum, Part, Plan, Side, Verdict, tail_of
+from coverage_lab.records_sizing import Inflation, Sizing
 from coverage_lab.report import write as write_folder
+from coverage_lab.report.notebook import audit_html, verdict_html
+from coverage_lab.sizing import size
 
 WHOLE_TABLE_UP_TO = 100_000
 TABLE_FLOOR = 1e-12  # above that n only outcomes with a probability over this somewhere in the range are listed
 LIBRARIES = ("numpy", "scipy", "pandas", "matplotlib")
+
+
+class Decided(Verdict):
+    """A verdict that notebooks can show."""
+
+    def _repr_html_(self) -> str:
+        return verdict_html(self)
+
+
+class Audited(Audit):
+    """A finished audit that notebooks can show."""
+
+    def _repr_html_(self) -> str:
+        return audit_html(self)
 
 
 def audit(
@@ -48,26 +66,75 @@ def audit(
         keep: a file for finished work, read when an interrupted audit is run again.
 
     Raises:
-        InputFault: a method of your own returned another shape, a NaN, or lower > upper.
+        InputFault: the plan states no range and no expected proportion, or no n, or asks for what only `sample_size`
+            can answer; or a method of your own failed or returned another shape, a NaN, or lower > upper.
     """
-    if extra:
-        plan = replace(plan, methods=(*plan.methods, *own_methods(extra)))
+    if faults := audit_faults(plan):
+        raise InputFault(*faults)
+    plan = _with_own(plan, extra)
     measured = measure(plan, workers, progress, keep)
     methods = verdict.judged(measured)
-    by_n = tuple(verdict.decide(measured, methods, n) for n in plan.sizes)
+    judged = (with_precision(plan, verdict.decide(measured, methods, n)) for n in plan.sizes)
+    by_n = tuple(Decided(**vars(item)) for item in judged)
     decided = verdict.overall(by_n)
-    return Audit(
+    return Audited(
         plan=plan,
         methods=methods,
         cells=measured.cells,
         curve=measured.curve,
         table=interval_table(plan, decided),
+        steady=saw(plan),
         verdict=decided,
         by_n=by_n,
         cross_check=measured.cross_check,
         cautions=cautions(measured, methods, decided),
         provenance=provenance(plan),
     )
+
+
+def sample_size(
+    plan: Plan,
+    *,
+    workers: int = 1,
+    extra: Mapping[str, Callable[..., Bounds]] | None = None,
+    progress: Progress | None = None,
+) -> Sizing:
+    """Choose n, and the method with it, for the plan's targets: precision, coverage, rare outcomes, a claim.
+
+    The standard is a target when the plan sets [precision], or no other target. What the sample has to make up for is
+    in [design]: population, design_effect, cluster_size, loss.
+
+    Args:
+        plan: from `read_plan` or `make_plan`; it needs no n.
+        workers: processes for the scan; used only when the work is worth them, and never changes a digit.
+        extra: methods of your own, name -> function (events, trials, tail) -> (lower, upper), sized like any other.
+        progress: called with what is being done and the share that is done.
+
+    Returns:
+        The record behind `sample-size --json`; `.document()` is that dictionary. Every n counts evaluable units; units
+        (`.verdict.units`, `.inflated`) are those to be recruited. Proportions, probabilities, coverages and half-widths
+        are shares between 0 and 1: a half-width of 0.02 is 2 percentage points. `.methods`, `.scan`, `.rare` and
+        `.characteristic` are pandas DataFrames.
+
+    Raises:
+        InputFault: targets that cannot be answered, one line each.
+        KeyboardInterrupt: on Ctrl-C, with what was finished.
+    """
+    return size(_with_own(plan, extra), _made_up_for(plan), workers=workers, progress=progress)
+
+
+def _with_own(plan: Plan, extra: Mapping[str, Callable[..., Bounds]] | None) -> Plan:
+    """The plan with methods of the user's own, measured like any other; those that it has already are not added."""
+    known = {method.name for method in plan.methods}
+    added = tuple(method for method in own_methods(extra or {}) if method.name not in known)
+    return replace(plan, methods=(*plan.methods, *added))
+
+
+def _made_up_for(plan: Plan) -> Inflation:
+    """What the plan's design says that the sample has to make up for."""
+    design = plan.document["design"]
+    loss = design.get("loss", {}).get("rate", 0.0)
+    return Inflation(design.get("design_effect", 1.0), design.get("population"), loss, design.get("cluster_size"))
 
 
 def interval_table(plan: Plan, decided: Verdict) -> pd.DataFrame:
@@ -100,14 +167,34 @@ def provenance(plan: Plan) -> dict[str, Any]:
     }
 
 
-def write_report(audit: Audit, folder: str | Path, *, overwrite: bool = False) -> Path:
+def write_report(
+    audit: Audit, folder: str | Path, *, overwrite: bool = False, progress: Progress | None = None
+) -> Path:
     """Write the report folder and return the path of its page.
+
+    progress: called with what is being done and the share that is done.
 
     Raises:
         InputFault: the folder holds another plan's report, or files that are no report, and `overwrite` is not set.
         OSError: the folder cannot be written; nothing half-written is left.
     """
-    return write_folder(audit, Path(folder), overwrite=overwrite)
+    return write_folder(audit, Path(folder), overwrite=overwrite, progress=progress)
+
+
+def write_sizing(
+    sizing: Sizing, folder: str | Path, *, overwrite: bool = False, progress: Progress | None = None
+) -> Path:
+    """Write the report folder of a sample size and return the path of its page.
+
+    progress: called with what is being done and the share that is done.
+
+    Raises:
+        InputFault: the folder holds another plan's report, or files that are no report, and `overwrite` is not set.
+        OSError: the folder cannot be written; nothing half-written is left.
+    """
+    made = provenance(sizing.plan)
+    del made["seed"]  # nothing is drawn
+    return report.write_sizing(sizing, Path(folder), overwrite=overwrite, provenance=made, progress=progress)
 
 
 def interval(
@@ -142,16 +229,16 @@ def minimum_coverage(
         InputFault: an unknown method, or one that does not apply; an unusable n, range, confidence or side.
     """
     faults = _question_faults(method, confidence, side)
-    low, high = between
     if not (_whole(n) and n >= 1):
         faults.append(expected("a whole number of at least 1", n, "n"))
-    if not 0 <= low <= high <= 1:
+    if not _range(between):
         faults.append(expected("0 <= low <= high <= 1", between, "between"))
     if faults:
         raise InputFault(*faults)
     chosen = _applicable(method, int(n), side)
+    low, high = (float(end) for end in between)
     parts = listed(Simple(), [chosen], int(n), (low, high), side, tail_of(confidence, side))
-    return minimum_of(parts, 0, float(low), float(high))
+    return minimum_of(parts, 0, low, high)
 
 
 def _question_faults(method: str, confidence: float, side: str) -> list[str]:
@@ -173,6 +260,15 @@ def _applicable(name: str, n: int, side: Side) -> Method:
     if reason is not None:
         raise InputFault(f"method {name!r} does not apply: {reason}")
     return method
+
+
+def _range(ends: object) -> bool:
+    """Whether these are two numbers with 0 <= low <= high <= 1."""
+    try:
+        low, high = np.asarray(ends, dtype=float)
+    except (TypeError, ValueError):
+        return False
+    return bool(0 <= low <= high <= 1)
 
 
 def _whole(value: object) -> bool:

@@ -13,7 +13,7 @@ import pandas as pd
 
 from coverage_lab import reach
 from coverage_lab.records import Measurements, Plan, Verdict
-from coverage_lab.rounding import percent
+from coverage_lab.rounding import percent, whole
 
 WIDER = 1.05  # a method gives way to a later one on the list that is this much narrower on average
 SIMULATION_MARGIN = 3.0  # standard errors a simulated figure must clear to pass or to fail
@@ -22,6 +22,7 @@ LOPSIDED = 1.25  # times the tail: beyond this, misses on one side are said to d
 
 
 Row = Mapping[str, Any]  # one row of the judged methods table
+Steady = Mapping[str, Sequence[Row]]  # method -> {n, passes} at each neighbour
 Status = Literal["recommended", "none", "undecided"]
 
 
@@ -75,13 +76,13 @@ def judged(measured: Measurements) -> pd.DataFrame:
     return measured.methods.assign(passes=passes, why=[item.why for item in judgements])
 
 
-def steady_at(measured: Measurements, n: int, method: str) -> tuple[Mapping[str, Any], ...]:
-    """Whether the method meets the standard at each n-3 … n+3 that was looked at."""
-    rows = measured.steady[(measured.steady["planned"] == n) & (measured.steady["method"] == method)]
-    return tuple(
-        {"n": int(row["n"]), "passes": meets(measured.plan, int(row["n"]), row["worst_miss"], row["mean_miss"])}
-        for row in rows_of(rows)
-    )
+def steadiness(measured: Measurements, n: int) -> Steady:
+    """For every method whether it meets the standard at each n-3 … n+3 that was looked at."""
+    found: dict[str, list[Row]] = {}
+    for row in rows_of(measured.steady[measured.steady["planned"] == n]):
+        passes = meets(measured.plan, int(row["n"]), row["worst_miss"], row["mean_miss"])
+        found.setdefault(row["method"], []).append({"n": int(row["n"]), "passes": passes})
+    return found
 
 
 def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
@@ -89,7 +90,8 @@ def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
     plan = measured.plan
     here = {row["method"]: row for row in rows_of(methods[methods["n"] == n])}
     listed = [method.name for method in plan.prefer if here[method.name]["applies"]]
-    holding = [name for name in listed if _holds_up(measured, here, n, name)]
+    steady = steadiness(measured, n)
+    holding = [name for name in listed if _holds_up(here, steady, name)]
     named = _first_not_wide(here, holding)
     status: Status = "recommended" if named else _without_name(here, listed)
     row = here[named] if named else None
@@ -99,8 +101,8 @@ def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
         method=named,
         sentence=_why_named(plan, here, listed, holding, named) if named else _why_not(plan, n, here, listed, status),
         prefer=tuple(method.name for method in plan.prefer),
-        steady=steady_at(measured, n, named) if named else (),
-        alternatives=_alternatives(measured, here, n, named),
+        steady=tuple(steady.get(named, ())) if named else (),
+        alternatives=_alternatives(plan, here, steady, named),
         closest=_closest(here, listed, n) if named is None else None,
         too_small=reach.too_small(plan, n, named) if named else None,
         holds_on=reach.holds_on(plan, n, named)
@@ -112,17 +114,20 @@ def decide(measured: Measurements, methods: pd.DataFrame, n: int) -> Verdict:
 
 
 def overall(by_n: Sequence[Verdict]) -> Verdict:
-    """The verdict at the smallest n with a recommendation; without one, an undecided one, else the last."""
-    for status in ("recommended", "undecided"):
-        for verdict in sorted(by_n, key=lambda item: item.n):
-            if verdict.status == status:
-                return verdict
-    return max(by_n, key=lambda item: item.n)
+    """The verdict at the smallest n whose recommendation is as precise as the plan asks; else at the smallest with one.
+
+    Without any recommendation, an undecided one, else the last.
+    """
+    ordered = sorted(by_n, key=lambda item: item.n)
+    named = [verdict for verdict in ordered if verdict.status == "recommended"]
+    precise = [verdict for verdict in named if verdict.precision is None or verdict.precision["meets"]]
+    undecided = [verdict for verdict in ordered if verdict.status == "undecided"]
+    return next(iter([*precise, *named, *undecided]), ordered[-1])
 
 
-def _holds_up(measured: Measurements, here: Mapping[str, Row], n: int, name: str) -> bool:
+def _holds_up(here: Mapping[str, Row], steady: Steady, name: str) -> bool:
     """Meets the standard at n and, where that can be computed exactly, at every neighbour."""
-    return here[name]["passes"] is True and all(item["passes"] for item in steady_at(measured, n, name))
+    return here[name]["passes"] is True and all(item["passes"] for item in steady.get(name, ()))
 
 
 def _first_not_wide(here: Mapping[str, Row], holding: Sequence[str]) -> str | None:
@@ -140,7 +145,7 @@ def _without_name(here: Mapping[str, Row], listed: Sequence[str]) -> Status:
 
 
 def _alternatives(
-    measured: Measurements, here: Mapping[str, Row], n: int, named: str | None
+    plan: Plan, here: Mapping[str, Row], steady: Steady, named: str | None
 ) -> tuple[Mapping[str, Any], ...]:
     """Every other method that meets the standard at n, its relative mean width, and what speaks against it."""
     found = []
@@ -148,17 +153,16 @@ def _alternatives(
         if row["passes"] is not True or row["method"] == named:
             continue
         relative = float(row["mean_width"] / here[named]["mean_width"]) if named else None
-        against = _against(measured, n, row["method"], relative)
+        against = _against(plan, steady, row["method"], relative)
         found.append({"method": row["method"], "relative_width": relative, "against": against})
     return tuple(found)
 
 
-def _against(measured: Measurements, n: int, name: str, relative: float | None) -> str:
+def _against(plan: Plan, steady: Steady, name: str, relative: float | None) -> str:
     """What speaks against naming this method."""
-    plan = measured.plan
     method = next(method for method in plan.methods if method.name == name)
     points = []
-    failing = [str(item["n"]) for item in steady_at(measured, n, name) if not item["passes"]]
+    failing = [str(item["n"]) for item in steady.get(name, ()) if not item["passes"]]
     if failing:
         points.append(f"fails at n = {', '.join(failing)}")
     if name not in [method.name for method in plan.prefer]:
@@ -197,7 +201,7 @@ def _why_named(plan: Plan, here: Mapping[str, Row], listed: Sequence[str], holdi
     """The recommendation in words, from the record that decided it."""
     row = here[named]
     return (
-        f"At n = {row['n']}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
+        f"At n = {whole(row['n'])}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
         f"{percent(row['minimum_coverage'], 'down')} everywhere in the planned range and "
         f"{percent(row['mean_coverage'], 'down')} on average; the standard asks {_standard(plan)}; "
         f"{_place(here, listed, holding, named)}."
@@ -221,16 +225,17 @@ def _why_not(plan: Plan, n: int, here: Mapping[str, Row], listed: Sequence[str],
     stated = f"stated list ({_labels(here, listed)})"
     if status == "undecided":
         return (
-            f"Undecided at n = {n}: simulated figures of the {stated} lie within 3 Monte Carlo standard errors of the "
-            f"standard, {_standard(plan)}; more replicates are needed."
+            f"Undecided at n = {whole(n)}: simulated figures of the {stated} lie within 3 Monte Carlo standard errors "
+            f"of the standard, {_standard(plan)}; more replicates are needed."
         )
-    return f"No method on the {stated} meets the standard at n = {n} and its neighbours: {_standard(plan)}."
+    return f"No method on the {stated} meets the standard at n = {whole(n)} and its neighbours: {_standard(plan)}."
 
 
 def _standard(plan: Plan) -> str:
     """The standard in numbers."""
     worst, mean = thresholds(plan)
-    return f"at least {percent(1 - worst)} everywhere in the planned range and {percent(1 - mean)} on average"
+    least, average = (max(0.0, 1 - miss) for miss in (worst, mean))
+    return f"at least {percent(least)} everywhere in the planned range and {percent(average)} on average"
 
 
 def _labels(here: Mapping[str, Row], listed: Sequence[str]) -> str:

@@ -7,9 +7,9 @@ import pytest
 
 PACKAGE = Path(__file__).parents[1] / "coverage_lab"
 
-GROUND = {"records", "records_sizing", "checks", "probability", "probability_finite", "rounding"}
+GROUND = {"records", "records_sizing", "checks", "probability", "probability_finite", "rounding", "sentences"}
 CATALOGUES = {"intervals", "designs"}
-ADVICE = {"verdict", "reach", "cautions", "sizing"}
+ADVICE = {"verdict", "reach", "cautions", "sizing", "precision"}
 EDGES = {"plan", "plan_text", "report"}
 
 ROOMS: dict[str, set[str]] = {
@@ -21,6 +21,7 @@ ROOMS: dict[str, set[str]] = {
     "probability": {"records"},
     "probability_finite": {"records", "probability"},
     "records_sizing": {"records"},
+    "sentences": {"records", "rounding"},
     # floor 1, catalogues: blind to each other
     "intervals": GROUND,
     "designs": GROUND,
@@ -31,6 +32,7 @@ ROOMS: dict[str, set[str]] = {
     "cautions": GROUND,
     "verdict": GROUND | {"engine", "reach"},
     "sizing": GROUND | CATALOGUES | {"engine", "reach", "verdict"},
+    "precision": GROUND | {"sizing"},
     # floor 4, edges: words in, pages out
     "plan": GROUND | CATALOGUES | {"plan_text"},
     "report": GROUND | {"plan_text"},

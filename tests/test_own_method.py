@@ -52,6 +52,29 @@ def test_a_wrong_rule_is_refused_by_name() -> None:
         cl.audit(plan(), extra={"broken": broken})
 
 
+def test_a_rule_that_raises_is_a_fault_that_names_it() -> None:
+    def impatient(events, trials, tail):
+        raise ZeroDivisionError("no trials")
+
+    with pytest.raises(cl.InputFault, match="method 'impatient' failed: ZeroDivisionError: no trials"):
+        cl.audit(plan(), extra={"impatient": impatient})
+
+
+def test_a_plan_made_with_the_rule_measures_it_once() -> None:
+    mine = cl.make_plan(
+        {"outcome": {"range": [0.005, 0.05]}, "sample": {"n": 60}, "simulation": {"routes": ["enumerated"]}},
+        extra={"house-rule": house_rule},
+    )
+    methods = cl.audit(mine, extra={"house-rule": house_rule}).methods["method"]
+    assert list(methods).count("house-rule") == 1
+
+
+@pytest.mark.parametrize("between", [(0.2, "x"), (0.5, 0.1), 0.3, (0.1, 0.2, 0.3), (-1, 0.5), (float("nan"), 0.5)])
+def test_an_unusable_range_is_one_line(between) -> None:
+    with pytest.raises(cl.InputFault, match=r"^between = "):
+        cl.minimum_coverage("wilson", 20, between)
+
+
 def test_a_taken_name_is_refused() -> None:
     with pytest.raises(cl.InputFault, match="wilson"):
         cl.audit(plan(), extra={"wilson": house_rule})

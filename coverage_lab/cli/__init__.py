@@ -8,7 +8,9 @@ from coverage_lab.cli.audit import audit
 from coverage_lab.cli.door import Door
 from coverage_lab.cli.interval import interval
 from coverage_lab.cli.methods import methods
+from coverage_lab.cli.page import page
 from coverage_lab.cli.plan import plan
+from coverage_lab.cli.sample_size import sample_size
 
 __all__ = ["cli", "main"]
 
@@ -18,6 +20,7 @@ See it at work on an invented study:  coverage-lab audit
 Ask about a study of your own:        coverage-lab audit --n 250 --range 0.005 0.05
 Write a plan file to fill in:         coverage-lab plan plan.toml
 Audit it:                             coverage-lab audit plan.toml
+Choose n for it:                      coverage-lab sample-size plan.toml
 Later, with the data in hand:         coverage-lab interval 7 250 --from plan-report"""
 
 
@@ -34,7 +37,7 @@ def cli() -> None:
     """
 
 
-for command in (audit, interval, methods, plan):
+for command in (audit, sample_size, interval, methods, plan, page):
     cli.add_command(command)
 
 

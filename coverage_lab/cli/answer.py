@@ -21,14 +21,14 @@ def answer(document: Document, page: Path | None) -> list[str]:
     width = min(WIDEST, shutil.get_terminal_size().columns - 1)
     facts = list(_facts(document))
     longest = max(len(name) for name, _ in facts)
-    lines = [*_wrapped(document["verdict"]["sentence"], width), ""]
+    lines = [*wrapped(document["verdict"]["sentence"], width), ""]
     for name, value in facts:
-        lines += _wrapped(f"{name:<{longest}}  {value}", max(width, longest + 30), " " * (longest + 2))
+        lines += wrapped(f"{name:<{longest}}  {value}", max(width, longest + 30), " " * (longest + 2))
     last = [f"{'Report':<{longest}}  {page}"] if page is not None else []
     return [*lines[: MOST_LINES - len(last)], *last]
 
 
-def _wrapped(text: str, width: int, hanging: str = "") -> list[str]:
+def wrapped(text: str, width: int, hanging: str = "") -> list[str]:
     """Lines of at most that width, names with hyphens unbroken."""
     return textwrap.wrap(text, width, subsequent_indent=hanging, break_on_hyphens=False)
 
@@ -50,6 +50,7 @@ def _facts(document: Document) -> Iterator[tuple[str, str]]:
         width = f"{SHORT_WIDTHS[document['side']]} {points(plain['mean_width'])}"
         yield plain["label"], f"would have covered {least(plain)} at worst, {how_sure(plain)}; {width}"
     yield from _one_sided(document)
+    yield from _precision(document)
     yield from _sizes(document)
     yield from _checks(document)
 
@@ -72,11 +73,24 @@ def _one_sided(document: Document) -> Iterator[tuple[str, str]]:
         yield "Bound by events", said
 
 
+def _precision(document: Document) -> Iterator[tuple[str, str]]:
+    """What the plan asks of the width, and what it gets."""
+    found = document["verdict"]["precision"]
+    if found is None:
+        return
+    got = f"expected half-width {points(found['expected_half_width'])} at worst, {points(found['half_width'])} asked"
+    if found["assurance"] is not None:
+        got += f"; kept to with probability {share(found['probability'], 'down')}, {share(found['assurance'])} asked"
+    yield "Precision", f"{got}: {'met' if found['meets'] else 'not met'}"
+
+
 def _sizes(document: Document) -> Iterator[tuple[str, str]]:
     """With several n, the verdict of each."""
     by_n = document["by_n"]
     if len(by_n) > 1:
-        yield "By n", ", ".join(f"{count(item['n'])}: {item['method'] or item['status']}" for item in by_n)
+        wide = {item["n"]: " (too wide)" for item in by_n if item["precision"] and not item["precision"]["meets"]}
+        named = (f"{count(item['n'])}: {item['method'] or item['status']}{wide.get(item['n'], '')}" for item in by_n)
+        yield "By n", ", ".join(named)
 
 
 def _checks(document: Document) -> Iterator[tuple[str, str]]:

@@ -1,15 +1,14 @@
 """`coverage-lab audit`: the main job."""
 
-import os
 from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import click
 
-from coverage_lab.checks import InputFault
 from coverage_lab.cli import options
 from coverage_lab.cli.door import KEPT, NO_RECOMMENDATION
+from coverage_lab.cli.folders import check_place, existing
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -30,24 +29,16 @@ Examples:
 
 @click.command(epilog=EXAMPLES, short_help="Recommend a method for a planned study, and write the report.")
 @click.argument("plan", type=click.Path(path_type=Path), required=False)
-@click.option("--n", type=options.number, multiple=True, metavar="N", help="Planned units; may be repeated.")
-@click.option(
-    "--range",
-    type=options.number,
-    nargs=2,
-    metavar="LOW HIGH",
-    help="Planned range of the true proportion; a plan's own grid gives way to 11 points over it.",
-)
-@click.option("--expected", type=options.number, metavar="P", help="The likeliest true proportion.")
+@options.n
+@options.planned_range
+@options.expected
 @options.confidence
 @options.side
-@click.option("--replicates", type=options.number, metavar="R", help="Simulated studies for each true proportion.")
-@click.option("--seed", type=options.number, metavar="S", help="Seed of the simulation.")
-@click.option(
-    "--out", type=click.Path(path_type=Path), metavar="DIR", help="Report folder. [default: named after PLAN]"
-)
-@click.option("--overwrite", is_flag=True, help="Replace what the report folder holds, whatever it is.")
-@click.option("--workers", type=options.number, default=1, metavar="N", help="Processes for large work. [default: 1]")
+@options.replicates
+@options.seed
+@options.out
+@options.overwrite
+@options.workers
 @options.as_json
 @options.quiet
 def audit(
@@ -65,11 +56,11 @@ def audit(
     these, too, the built-in demonstration is audited. The same plan and seed give the same figures, whatever --workers.
     """
     read, name = _plan_of(plan, overrides)
-    chosen, processes = options.together(read, lambda: _processes(workers))
+    chosen, processes = options.together(read, lambda: options.processes(workers))
     folder = out if out is not None else Path(f"{name}-report")
     _check_folder(folder, chosen, overwrite)
     done = _computed(chosen, processes, folder, quiet)
-    page, failure = _written(done, folder, overwrite)
+    page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
     if failure is not None:
         raise failure
@@ -82,23 +73,10 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
     from coverage_lab.plan import DEMONSTRATION, make_plan, read_plan
 
     if path is not None:
-        return lambda: read_plan(path, overrides=overrides), path.stem
+        return lambda: read_plan(path, overrides=overrides, audited=True), path.stem
     if any(overrides[name] not in (None, ()) for name in DEFINING):
-        return lambda: make_plan({}, overrides=overrides), "audit"
-    return lambda: read_plan(DEMONSTRATION, overrides=overrides), DEMONSTRATION.stem
-
-
-def _processes(workers: object) -> int:
-    """The number of workers.
-
-    Raises:
-        InputFault: not a whole number of at least 1.
-    """
-    from coverage_lab.plan import of_option
-
-    if isinstance(workers, int) and workers >= 1:
-        return workers
-    raise InputFault(of_option("--workers", workers, "a whole number of at least 1"))
+        return lambda: make_plan({}, overrides=overrides, audited=True), "audit"
+    return lambda: read_plan(DEMONSTRATION, overrides=overrides, audited=True), DEMONSTRATION.stem
 
 
 def _check_folder(folder: Path, plan: "Plan", overwrite: bool) -> None:
@@ -110,16 +88,7 @@ def _check_folder(folder: Path, plan: "Plan", overwrite: bool) -> None:
     from coverage_lab.report.folder import check_target
 
     check_target(folder, plan.document, overwrite)
-    above = _existing(folder)
-    if not above.is_dir():
-        raise InputFault(f"{folder}: expected a folder for the report, but {above} is a file")
-    if not os.access(above, os.W_OK | os.X_OK):
-        raise InputFault(f"{folder}: expected a folder for the report, but {above} is not writable")
-
-
-def _existing(folder: Path) -> Path:
-    """The folder itself, or the nearest above it that exists."""
-    return next(path for path in (folder.absolute(), *folder.absolute().parents) if path.exists())
+    check_place(folder)
 
 
 def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
@@ -129,7 +98,7 @@ def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
     from coverage_lab import study
 
     target = folder.absolute()
-    keep = _existing(target.parent) / f".{target.name}.kept"
+    keep = existing(target.parent) / f".{target.name}.kept"
     click.get_current_context().meta[KEPT] = keep
     with progress(quiet) as report:
         try:
@@ -138,12 +107,13 @@ def _computed(plan: "Plan", workers: int, folder: Path, quiet: bool) -> "Audit":
             raise OSError(0, f"finished work cannot be kept: {error}", str(keep)) from error
 
 
-def _written(done: "Audit", folder: Path, overwrite: bool) -> tuple[Path | None, OSError | None]:
+def _written(done: "Audit", folder: Path, overwrite: bool, quiet: bool) -> tuple[Path | None, OSError | None]:
     """The report's page; or why it could not be written, after which the answer is still shown."""
     from coverage_lab import study
 
     try:
-        return study.write_report(done, folder, overwrite=overwrite), None
+        with progress(quiet) as report:
+            return study.write_report(done, folder, overwrite=overwrite, progress=report), None
     except OSError as error:
         return None, error
 

@@ -31,8 +31,8 @@ class Door(click.Group):
         except InputFault as fault:
             _say(fault.faults)
             ctx.exit(UNUSABLE)
-        except KeyboardInterrupt:
-            _say(_interrupted(ctx))
+        except KeyboardInterrupt as stop:
+            _say(_interrupted(ctx, *stop.args[:1]))
             ctx.exit(INTERRUPTED)
         except OSError as error:
             if error.errno == errno.EPIPE:  # whoever was reading has stopped: click knows what to do
@@ -41,11 +41,12 @@ class Door(click.Group):
             ctx.exit(UNUSABLE)
 
 
-def _interrupted(ctx: click.Context) -> list[str]:
-    """What becomes of the work done so far, and the command that goes on with it."""
+def _interrupted(ctx: click.Context, finished: str = "") -> list[str]:
+    """What was finished, what becomes of it, and the command that goes on with it."""
     kept = ctx.meta.get(KEPT)
     state = f"finished work is kept in {kept}" if kept is not None and kept.exists() else "nothing was written"
-    return [f"interrupted: {state}; to go on, run again:", f"  {shlex.join(['coverage-lab', *ctx.meta[ARGUMENTS]])}"]
+    said = "; ".join(part for part in (finished, state) if part)
+    return [f"interrupted: {said}; to go on, run again:", f"  {shlex.join(['coverage-lab', *ctx.meta[ARGUMENTS]])}"]
 
 
 def _say(lines: Iterable[str]) -> None:

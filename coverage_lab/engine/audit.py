@@ -1,6 +1,6 @@
 """The order of a measurement: list cells, draw, measure every n, look at the neighbours of n, compare the routes."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping, Sequence, Set
 from dataclasses import replace
 from pathlib import Path
 
@@ -18,6 +18,9 @@ from coverage_lab.records import Design, Measurements, Method, Outcomes, Plan
 
 NEIGHBOURS = 3  # the number evaluated is never exactly the number planned
 ALL_STEADY_UP_TO = 500  # beyond this n only the preferred methods are looked at beside n itself
+PLAIN = "wald"  # the formula that everybody knows
+WIDE = 25  # how far on either side of n the worst coverage is shown, but never further than a third of n …
+WIDE_UP_TO = 2000  # … up to this n; beyond it `NEIGHBOURS`, since every n costs more
 
 WORDS = ("label", "family", "source", "formula", "ends", "faults")
 WHOLE = {"simulated_replicates": "Int64"}
@@ -80,20 +83,41 @@ def steady(plan: Plan) -> pd.DataFrame:
     The preferred methods always; all others too while that is quick.
     """
     rows: list[dict[str, object]] = []
-    over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
-    for planned in plan.sizes if "enumerated" in plan.simulation.routes else ():
-        for n in range(max(1, planned - NEIGHBOURS), planned + NEIGHBOURS + 1):
-            for seen, group in views(plan, applying(plan, n)):
-                quick = planned <= ALL_STEADY_UP_TO and len(size.manageable(seen.design, n, over.low, over.high)) == 1
-                methods = [method for method in group if quick or method in plan.prefer]
-                if not methods or not size.manageable(seen.design, n, over.low, over.high):
-                    continue
-                parts = listed(seen.design, methods, n, (over.low, over.high), plan.side, plan.tail)
-                found = figures(parts, over, plan.side)
-                rows += [
-                    {"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=True)
-                ]
+    for planned in plan.sizes:
+        names = {m.name for m in (plan.methods if planned <= ALL_STEADY_UP_TO else plan.prefer)}
+        rows += _beside(plan, planned, NEIGHBOURS, names)
     return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss", "mean_width"])
+
+
+def saw(plan: Plan) -> pd.DataFrame:
+    """How worst and mean miss move with n around every planned n, for the preferred methods and plus-or-minus."""
+    names = {PLAIN, *(method.name for method in plan.prefer)}
+    rows: list[dict[str, object]] = []
+    for planned in plan.sizes:
+        reach = min(WIDE, planned // 3) if planned <= WIDE_UP_TO else 0
+        rows += _beside(plan, planned, max(reach, NEIGHBOURS), names)
+    return pd.DataFrame(rows, columns=["planned", "n", "method", "worst_miss", "mean_miss"])
+
+
+def _beside(plan: Plan, planned: int, reach: int, names: Set[str]) -> list[dict[str, object]]:
+    """Exact figures of the named methods at every n within `reach` of the planned one; none without enumeration."""
+    if "enumerated" not in plan.simulation.routes:
+        return []
+    over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
+    rows: list[dict[str, object]] = []
+    for n in range(max(1, planned - reach), planned + reach + 1):
+        for seen, group in views(plan, applying(plan, n)):
+            parts = size.manageable(seen.design, n, over.low, over.high)
+            quick = len(parts) == 1  # a mixture takes its time: only who may be named, and only nearby
+            if not parts or not (quick or abs(n - planned) <= NEIGHBOURS):
+                continue
+            methods = [m for m in group if m.name in names and (quick or m in plan.prefer)]
+            exact = listed(seen.design, methods, n, (over.low, over.high), plan.side, plan.tail) if methods else []
+            found = figures(exact, over, plan.side) if methods else []
+            rows += [
+                {"planned": planned, "n": n, "method": m.name, **row} for m, row in zip(methods, found, strict=True)
+            ]
+    return rows
 
 
 def _fits(found: Support) -> list[tuple[float, int]]:

@@ -7,6 +7,7 @@ from pathlib import Path
 
 from coverage_lab.plan.build import make_level, make_plan, read_plan
 from coverage_lab.plan.faults import of_option
+from coverage_lab.plan.needs import audit_faults
 from coverage_lab.plan.own import available, own_methods
 from coverage_lab.plan.schema import LARGEST_N
 
@@ -14,6 +15,7 @@ __all__ = [
     "DEMONSTRATION",
     "LARGEST_N",
     "STARTER",
+    "audit_faults",
     "available",
     "make_level",
     "make_plan",

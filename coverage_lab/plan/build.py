@@ -1,7 +1,6 @@
 """A document becomes a `Plan`: checked by the schema and against the catalogues, its defaults filled in."""
 
 from collections.abc import Iterator, Mapping
-from decimal import Decimal
 from pathlib import Path
 from typing import Any
 
@@ -12,8 +11,19 @@ from coverage_lab.checks import InputFault, expected, unknown
 from coverage_lab.plan.check import Checked, check, check_head
 from coverage_lab.plan.faults import Fault, Source
 from coverage_lab.plan.lines import KeyPath, lines_of
+from coverage_lab.plan.needs import between_targets, for_any, for_audit
 from coverage_lab.plan.overrides import overridden
 from coverage_lab.plan.own import Extra, known_methods
+from coverage_lab.plan.parts import (
+    decision_of,
+    named,
+    outcome_of,
+    precision_of,
+    rare_of,
+    simulation_of,
+    standard_of,
+    study_of,
+)
 from coverage_lab.plan.reading import parsed, plain
 from coverage_lab.plan.schema import (
     DesignTable,
@@ -21,25 +31,28 @@ from coverage_lab.plan.schema import (
     MethodsTable,
     OutcomeTable,
     SampleTable,
-    SimulationTable,
     StandardTable,
-    StudyTable,
     Table,
 )
-from coverage_lab.records import Method, Outcome, Plan, Side, Simulation, Standard, Study
+from coverage_lab.records import Method, Outcome, Plan, Rare, Side, alpha_of
 
-GRID_POINTS = 11
-STANDARDS = {"bradley": (1.5, 1.1), "guaranteed": (1 + 1e-9, 1 + 1e-9)}
 LEAST_WEIGHT = 1e-6  # the prior's weight of the planned range, relative to the range's width, that means can bear
 
 
-def read_plan(path: str | Path, *, extra: Extra | None = None, overrides: Mapping[str, Any] | None = None) -> Plan:
+def read_plan(
+    path: str | Path,
+    *,
+    extra: Extra | None = None,
+    overrides: Mapping[str, Any] | None = None,
+    audited: bool = False,
+) -> Plan:
     """The plan in a TOML file.
 
     Args:
         path: the file; its name without suffix is the title of a plan that has none.
         extra: methods of your own, as in `make_plan`.
         overrides: as in `make_plan`.
+        audited: as in `make_plan`.
 
     Raises:
         InputFault: one line per fault, with file, line, key, what was expected and what came.
@@ -47,11 +60,14 @@ def read_plan(path: str | Path, *, extra: Extra | None = None, overrides: Mappin
     text, document = parsed(path)
     document, options = overridden(document, overrides or {})
     source = Source(str(path), lines_of(text), options, by_command=overrides is not None)
-    return _plan(document, source, Path(path).stem, extra)
+    return _plan(document, source, Path(path).stem, extra, audited)
 
 
 def make_plan(
-    mapping: Mapping[str, Any], extra: Extra | None = None, overrides: Mapping[str, Any] | None = None
+    mapping: Mapping[str, Any],
+    extra: Extra | None = None,
+    overrides: Mapping[str, Any] | None = None,
+    audited: bool = False,
 ) -> Plan:
     """The plan in a mapping with the plan file's own keys.
 
@@ -59,6 +75,7 @@ def make_plan(
         mapping: such as {"outcome": {"range": [0.005, 0.05]}, "sample": {"n": 250}}.
         extra: methods of your own, name -> function (events, trials, tail) -> (lower, upper).
         overrides: values of command-line options by the option's name without dashes (`n`: a list); None is no value.
+        audited: whether the plan has to say what an audit needs, too: a range or an expected proportion, and n.
 
     Raises:
         InputFault: one line per fault, with key, what was expected and what came.
@@ -67,7 +84,7 @@ def make_plan(
         raise InputFault(expected("a mapping with the keys of a plan file", mapping, "plan"))
     document = {key: plain(value) for key, value in mapping.items()}
     document, options = overridden(document, overrides or {})
-    return _plan(document, Source(options=options, by_command=overrides is not None), "Untitled plan", extra)
+    return _plan(document, Source(options=options, by_command=overrides is not None), "Untitled plan", extra, audited)
 
 
 def make_level(overrides: Mapping[str, Any]) -> tuple[float, Side]:
@@ -84,12 +101,13 @@ def make_level(overrides: Mapping[str, Any]) -> tuple[float, Side]:
     return head.confidence, head.side
 
 
-def _plan(document: Mapping[str, Any], source: Source, title: str, extra: Extra | None) -> Plan:
+def _plan(document: Mapping[str, Any], source: Source, title: str, extra: Extra | None, audited: bool) -> Plan:
     """The plan, or every fault of it in the order of the file."""
     checked = check(document)
     known, own_faults = known_methods(extra or {})
+    lacking = [*(for_audit(document) if audited else ()), *for_any(document, checked)]
     found: dict[KeyPath, Fault] = {}
-    for fault in (*checked.faults, *_beyond_schema(document, checked, known)):
+    for fault in (*checked.faults, *lacking, *_beyond_schema(document, checked, known)):
         found.setdefault(fault.path, fault)
     faults = sorted(found.values(), key=source.rank)
     if faults or own_faults:
@@ -105,10 +123,16 @@ def _beyond_schema(document: Mapping[str, Any], checked: Checked, known: Mapping
     for key in ("only", "prefer"):
         names = _items(document, "methods", key)
         yield from _method_faults(key, names, None if head is None else head.side, known)
-    if outcome is not None:
-        found = _outcome(outcome)
+    yield from _unreachable(_items(document, "methods", "only"), checked.find(SampleTable), known)
+    yield from _vacuous(checked.find(StandardTable), head)
+    yield from between_targets(checked)
+    grid = _items(document, "simulation", "grid")
+    if outcome is not None and named(checked) is not None:
+        found = outcome_of(checked)
         yield from _prior_faults(found)
-        yield from _grid_faults(_items(document, "simulation", "grid"), found)
+        yield from _grid_faults(grid, found)
+    elif outcome is not None and grid:
+        yield Fault(("simulation", "grid"), "to be left out where no range is planned", grid)
 
 
 def _items(document: Mapping[str, Any], table: str, key: str) -> list[Any]:
@@ -128,6 +152,29 @@ def _method_faults(key: str, names: list[Any], side: Side | None, known: Mapping
         elif side is not None and side not in known[name].sides:
             can = " or ".join(known[name].sides)
             yield Fault(("methods", key, k), f'a method for side = "{side}"; this one is for {can} only', name)
+
+
+def _unreachable(only: list[Any], sample: SampleTable | None, known: Mapping[str, Method]) -> Iterator[Fault]:
+    """A size for which not one of the methods to be measured can be computed."""
+    reaches = [known[name].largest_n for name in only if isinstance(name, str) and name in known]
+    bounded = [reach for reach in reaches if reach is not None]
+    if sample is None or not reaches or len(bounded) < len(reaches):
+        return
+    beyond = [n for n in sample.sizes if n > max(bounded)]
+    if beyond:
+        what = f"a method that can be computed at n = {beyond[0]}; these go up to n = {max(bounded)}"
+        yield Fault(("methods", "only"), what, only)
+
+
+def _vacuous(standard: StandardTable | None, head: Head | None) -> Iterator[Fault]:
+    """A standard of the user's own that no interval could miss."""
+    if standard is None or head is None:
+        return
+    most = 1 / alpha_of(head.confidence)
+    for key in ("worst_miss", "mean_miss"):
+        factor = getattr(standard, key)
+        if factor is not None and factor >= most:
+            yield Fault(("standard", key), f"a number below {most:g}, or every interval would pass", factor)
 
 
 def _prior_faults(outcome: Outcome) -> Iterator[Fault]:
@@ -150,37 +197,52 @@ def _grid_faults(grid: list[Any], outcome: Outcome) -> Iterator[Fault]:
 def _built(checked: Checked, known: Mapping[str, Method], title: str) -> Plan:
     """The plan from sound tables."""
     head, asked = checked.get(Head), checked.get(MethodsTable)
-    outcome = _outcome(checked.get(OutcomeTable))
-    simulation = _simulation(checked.get(SimulationTable), outcome)
+    outcome, sample = outcome_of(checked), checked.get(SampleTable)
+    simulation = simulation_of(checked, outcome)
     entry = designs.CATALOGUE[checked.get(DesignTable).kind]
     only = asked.only or list(known)
     prefer = [name for name in asked.prefer or entry.prefer(head.side) if name in only] or only
+    rare, decision = rare_of(checked), decision_of(checked)
     filled: dict[str, dict[str, Any]] = {
         "": {"title": head.title or title},
-        "outcome": {"expected": outcome.expected, "range": [outcome.low, outcome.high]},
-        "simulation": {"grid": list(simulation.grid)},
+        "rare": _rare_filled(rare),
+        "decision": {"alpha": decision.alpha} if decision else {},
         "methods": {"prefer": prefer},
     }
+    if checked.get(OutcomeTable).stated:
+        filled["outcome"] = {"expected": outcome.expected, "range": [outcome.low, outcome.high]}
+        filled["simulation"] = {"grid": list(simulation.grid)}
     return Plan(
         title=head.title or title,
         confidence=head.confidence,
         side=head.side,
-        study=_study(checked.get(StudyTable)),
+        study=study_of(checked),
         outcome=outcome,
-        sizes=_sizes(checked.get(SampleTable)),
-        standard=_standard(checked.get(StandardTable)),
+        sizes=sample.sizes,
+        standard=standard_of(checked),
         design=entry.frame(),
         simulation=simulation,
         methods=tuple(method for name, method in known.items() if name in only),
         prefer=tuple(known[name] for name in prefer),
         document=_document(checked, filled),
+        precision=precision_of(checked),
+        rare=rare,
+        decision=decision,
+        horizon=sample.horizon,
     )
 
 
 def _document(checked: Checked, filled: Mapping[str, Mapping[str, Any]]) -> dict[str, Any]:
     """The plan with the file's own keys and every default filled in; it reads back to the same plan."""
-    found = {name: _filled(table, filled.get(name, {})) for name, table in checked.tables.items()}
-    return {**found.pop(""), **{name: table for name, table in found.items() if table}}
+    document: dict[str, Any] = {}
+    for name, table in checked.tables.items():
+        found = _filled(table, filled.get(name, {}))
+        *outer, last = name.split(".")
+        around = document
+        for part in outer:
+            around = around.setdefault(part, {})
+        around.update(found if not name else {last: found} if found else {})
+    return document
 
 
 def _filled(table: Table, filled: Mapping[str, Any]) -> dict[str, Any]:
@@ -189,45 +251,9 @@ def _filled(table: Table, filled: Mapping[str, Any]) -> dict[str, Any]:
     return {key: value for key, value in said.items() if value is not None}
 
 
-def _study(table: StudyTable) -> Study:
-    return Study(table.population, table.unit, table.target, table.range_basis)
-
-
-def _sizes(table: SampleTable) -> tuple[int, ...]:
-    return tuple(table.candidates) if table.candidates is not None else (table.n or 0,)
-
-
-def _standard(table: StandardTable) -> Standard:
-    worst, mean = STANDARDS.get(table.kind, (table.worst_miss or 0.0, table.mean_miss or 0.0))
-    return Standard(table.kind, worst, mean)
-
-
-def _outcome(table: OutcomeTable) -> Outcome:
-    """The outcome with the half of (expected, range) that was left out; sums are decimal, as people do them."""
-    if table.range is not None:
-        low, high = table.range
-        middle = float((_decimal(low) + _decimal(high)) / 2)
-        expected_p = middle if table.expected is None else table.expected
-    else:
-        expected_p = table.expected or 0.0
-        p = _decimal(expected_p)
-        low, high = float(max(p / 2, 2 * p - 1)), float(min(2 * p, (1 + p) / 2))
-    first, second = table.prior
-    return Outcome(table.name, expected_p, low, high, (first, second))
-
-
-def _simulation(table: SimulationTable, outcome: Outcome) -> Simulation:
-    grid = _spread(outcome.low, outcome.high) if table.grid is None else tuple(table.grid)
-    return Simulation(table.replicates, table.seed, grid, tuple(table.routes))
-
-
-def _spread(low: float, high: float) -> tuple[float, ...]:
-    """Evenly spaced proportions, both ends included; 0.0095 and not 0.009500000000000001."""
-    start, step = _decimal(low), (_decimal(high) - _decimal(low)) / (GRID_POINTS - 1)
-    inner = (float(start + k * step) for k in range(1, GRID_POINTS - 1))
-    return tuple(dict.fromkeys([low, *(min(max(p, low), high) for p in inner), high]))
-
-
-def _decimal(p: float) -> Decimal:
-    """The number as it is written."""
-    return Decimal(repr(p))
+def _rare_filled(rare: Rare | None) -> dict[str, Any]:
+    """What was left out of [rare]; nothing for a part of it that is not asked."""
+    if rare is None:
+        return {}
+    ruled_out = {"events": list(rare.events), "hoped_for": rare.hoped_for} if rare.limit is not None else {}
+    return ruled_out | ({"with_probability": rare.with_probability} if rare.see_at_least is not None else {})

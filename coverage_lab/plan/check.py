@@ -9,7 +9,8 @@ from pydantic import ValidationError
 from coverage_lab.checks import shown, unknown
 from coverage_lab.plan.faults import Fault
 from coverage_lab.plan.lines import KeyPath
-from coverage_lab.plan.schema import TABLES, Head, Table
+from coverage_lab.plan.schema import Head, Table
+from coverage_lab.plan.tables import TABLES
 
 AnyTable = TypeVar("AnyTable", bound=Table)
 
@@ -35,11 +36,11 @@ class Checked:
 
 def check(document: Mapping[str, Any]) -> Checked:
     """Every table checked by itself, so that a fault in one hides none in another."""
-    contents = {"": _head(document), **{name: document.get(name, {}) for name in TABLES}}
+    places = [_Place("", Head, _head(document)), *_places(document)]
     tables: dict[str, Table] = {}
     faults: list[Fault] = []
-    for name, content in contents.items():
-        place = _Place(name, TABLES.get(name, Head), content)
+    for place in places:
+        name = place.name
         table, found = _check_table(place)
         faults += found
         if table is not None:
@@ -58,6 +59,19 @@ def _head(document: Mapping[str, Any]) -> dict[str, Any]:
     return {key: value for key, value in document.items() if key not in TABLES}
 
 
+def _places(document: Mapping[str, Any]) -> Iterator["_Place"]:
+    """The tables to be looked at: all that are there, and those that stand for their defaults when left out."""
+    for name, model in TABLES.items():
+        *outer, last = name.split(".")
+        around: Any = document
+        for part in outer:
+            around = around.get(part, {})
+            if not isinstance(around, Mapping):  # which is a fault of its own
+                around = {}
+        if last in around or not model.optional:
+            yield _Place(name, model, around.get(last, {}))
+
+
 @dataclass(frozen=True)
 class _Place:
     """A table that was looked at: its name, what it may hold, what it holds."""
@@ -68,12 +82,17 @@ class _Place:
 
     def path(self, *keys: str | int) -> KeyPath:
         """The path of a key of this table."""
-        return (self.name, *keys) if self.name else keys
+        return (*self.name.split("."), *keys) if self.name else keys
 
     @property
     def title(self) -> str:
         """As a plan file writes it; nothing for the head."""
         return f"[{self.name}]" if self.name else ""
+
+    @property
+    def inner(self) -> list[str]:
+        """The tables inside this one, which are looked at by themselves."""
+        return [name.removeprefix(f"{self.name}.") for name in TABLES if self.name and name.startswith(f"{self.name}.")]
 
 
 def _check_table(place: _Place) -> tuple[Table | None, list[Fault]]:
@@ -81,7 +100,7 @@ def _check_table(place: _Place) -> tuple[Table | None, list[Fault]]:
     if not isinstance(place.content, Mapping):
         return None, [Fault(place.path(), f"a table {place.title}", place.content)]
     fields = place.model.model_fields
-    unknown_keys = [key for key in place.content if key not in fields]
+    unknown_keys = [key for key in place.content if key not in fields and key not in place.inner]
     faults = [Fault(place.path(key), _unknown_key(str(key), place), where=place.title) for key in unknown_keys]
     try:
         known_part = {key: value for key, value in place.content.items() if key in fields}
@@ -116,12 +135,13 @@ def _worded_between(context: Mapping[str, Any], place: _Place) -> Fault:
     """A fault between keys."""
     if context["kind"] == "field":
         return Fault(place.path(context["key"]), context["what"], place.content[context["key"]])
-    came = (
-        f"only {', '.join(key if str(key).isprintable() else repr(key) for key in place.content)}"
-        if place.content
-        else "nothing"
-    )
-    return Fault(place.path(), f"expected {context['what']}, came {came}", where=place.title)
+    return Fault(place.path(), f"expected {context['what']}, came {_came(place.content)}", where=place.title)
+
+
+def _came(content: Mapping[str, Any]) -> str:
+    """The keys of a table that lacks one."""
+    keys = [key if str(key).isprintable() else repr(key) for key in content]
+    return f"only {', '.join(keys)}" if keys else "nothing"
 
 
 def _unknown_key(name: str, place: _Place) -> str:
@@ -131,7 +151,8 @@ def _unknown_key(name: str, place: _Place) -> str:
         return f"unknown key {shown(name)}: it belongs in [{homes[0]}]"
     if place.name and name in Head.model_fields:
         return f"unknown key {shown(name)}: it belongs above the first table"
-    return unknown("key", name, [*place.model.model_fields, *(() if place.name else TABLES)])
+    others = place.inner if place.name else [table for table in TABLES if "." not in table]
+    return unknown("key", name, [*place.model.model_fields, *others])
 
 
 def percent_hint(value: object) -> str:

@@ -7,7 +7,13 @@ from coverage_lab.checks import expected, shown
 from coverage_lab.plan.lines import KeyPath, line_of
 
 # Options that fill what a table lacks.
-INSTEAD: dict[KeyPath, str] = {("sample",): "--n", ("outcome",): "--range or --expected"}
+INSTEAD: dict[KeyPath, str] = {
+    ("outcome",): "--range or --expected",
+    ("sample",): "--n",
+    ("precision",): "--half-width",
+    ("rare",): "--rule-out",
+    ("decision",): "--goal and --believed",
+}
 LAST = 1_000_000_000  # after every line of a file
 
 
@@ -16,13 +22,14 @@ class Fault:
     """One fault of a document.
 
     what: what was expected instead of the value found at the path. With `where` it is a remark about that place, and
-    there is no value.
+    there is no value. instead: the options that could fill what is missing, where they are not the place's usual ones.
     """
 
     path: KeyPath
     what: str
     value: object = None
     where: str | None = None
+    instead: str | None = None
 
 
 @dataclass(frozen=True)
@@ -40,7 +47,7 @@ class Source:
 
     def line(self, fault: Fault) -> str:
         """The fault as people read it."""
-        option = self.options.get(fault.path[:2])
+        option = self._option(fault)
         if option is not None:
             return of_option(option, fault.value, fault.what)
         number = line_of(fault.path, self.lines)
@@ -49,15 +56,19 @@ class Source:
 
     def rank(self, fault: Fault) -> int:
         """For listing faults in the order of the file; those of options come after it."""
-        if fault.path[:2] in self.options:
+        if self._option(fault) is not None:
             return LAST
         return line_of(fault.path, self.lines) or LAST
+
+    def _option(self, fault: Fault) -> str | None:
+        """The option that set the key, or the list of which an item is wrong."""
+        return next((name for path, name in self.options.items() if fault.path[: len(path)] == path), None)
 
     def _said(self, fault: Fault) -> str:
         """The fault without its place in the file."""
         if fault.where is None:
             return _of_value(fault)
-        instead = INSTEAD.get(fault.path) if self.by_command else None
+        instead = fault.instead or INSTEAD.get(fault.path) if self.by_command else None
         hint = f"; or give {instead}" if instead else ""
         return ": ".join(part for part in (fault.where, fault.what + hint) if part)
 
@@ -78,8 +89,9 @@ def _of_value(fault: Fault) -> str:
 
 def _words(path: KeyPath) -> str:
     """A key as a plan file writes it, items of lists counted from 1."""
-    table, key = (f"[{path[0]}] ", path[1:]) if len(path) > 1 else ("", path)
-    return table + ", ".join(f"item {part + 1}" if isinstance(part, int) else part for part in key)
+    names = [part for part in path if isinstance(part, str)]
+    table = f"[{'.'.join(names[:-1])}] " if len(names) > 1 else ""
+    return table + ", ".join([*names[-1:], *(f"item {part + 1}" for part in path if isinstance(part, int))])
 
 
 def _typed(value: object) -> str:

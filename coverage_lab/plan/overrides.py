@@ -15,6 +15,20 @@ OPTIONS: dict[str, KeyPath] = {
     "expected": ("outcome", "expected"),
     "replicates": ("simulation", "replicates"),
     "seed": ("simulation", "seed"),
+    "horizon": ("sample", "horizon"),
+    "half_width": ("precision", "half_width"),
+    "assurance": ("precision", "assurance"),
+    "rule_out": ("rare", "limit"),
+    "events": ("rare", "events"),
+    "hoped_for": ("rare", "hoped_for"),
+    "goal": ("decision", "goal"),
+    "believed": ("decision", "believed"),
+    "alpha": ("decision", "alpha"),
+    "power": ("decision", "power"),
+    "population": ("design", "population"),
+    "loss": ("design", "loss", "rate"),
+    "design_effect": ("design", "design_effect"),
+    "cluster_size": ("design", "cluster_size"),
 }
 REPLACED = {"n": (("sample", "n"), ("sample", "candidates")), "range": (("simulation", "grid"),)}
 
@@ -29,7 +43,7 @@ def overridden(document: Mapping[str, Any], overrides: Mapping[str, Any]) -> tup
     for option, value in overrides.items():
         if option not in OPTIONS:
             raise InputFault(unknown("override", option, OPTIONS))
-        if value is None or (option == "n" and len(value) == 0):
+        if value is None or (isinstance(value, list | tuple) and len(value) == 0):
             continue
         path, given = OPTIONS[option], plain(value)
         for key in REPLACED.get(option, ()):
@@ -37,7 +51,7 @@ def overridden(document: Mapping[str, Any], overrides: Mapping[str, Any]) -> tup
         if option == "n":
             path, given = (path, value[0]) if len(value) == 1 else (("sample", "candidates"), list(value))
         changed = _with(changed, path, given)
-        options[path] = f"--{option}"
+        options[path] = f"--{option.replace('_', '-')}"
     return changed, options
 
 
@@ -55,4 +69,4 @@ def _with(document: dict[str, Any], path: KeyPath, value: object) -> dict[str, A
     if len(path) == 1:
         return {**document, name: value}
     inside = document.get(name, {})
-    return {**document, name: {**inside, str(path[1]): value}} if isinstance(inside, Mapping) else document
+    return {**document, name: _with(dict(inside), path[1:], value)} if isinstance(inside, Mapping) else document

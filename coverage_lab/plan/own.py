@@ -1,5 +1,6 @@
 """Methods that are not the catalogue's: the user's functions, and those of installed packages."""
 
+import functools
 import importlib.metadata
 from collections.abc import Callable, Mapping
 
@@ -50,8 +51,23 @@ def known_methods(extra: Extra) -> tuple[dict[str, Method], list[str]]:
         if fault := _own_fault(name, function, known):
             faults.append(fault)
         elif callable(function):
-            known[name] = Method(name, function, label=name, family="your own", source="supplied by the user")
+            guarded = _guarded(name, function)
+            known[name] = Method(name, guarded, label=name, family="your own", source="supplied by the user")
     return known, faults
+
+
+def _guarded(name: str, function: Callable[..., Bounds]) -> Callable[..., Bounds]:
+    """The function, with whatever it raises turned into a fault that names it: a stranger's error is not ours."""
+
+    @functools.wraps(function)
+    def call(*columns: object) -> Bounds:
+        try:
+            return function(*columns)
+        except Exception as error:
+            reason = " ".join(f"{type(error).__name__}: {error}".split())
+            raise InputFault(f"method {name!r} failed: {reason}") from error
+
+    return call
 
 
 def _own_fault(name: object, function: object, known: Mapping[str, Method]) -> str | None:

@@ -1,13 +1,14 @@
 """What a plan may say, table by table.
 
-A new capability adds a small model here and a line in `TABLES`. Every field's description is what its fault expects;
+A new capability adds a small model and a line in `tables.TABLES`. Every field's description is what its fault expects;
 "item" in its extras is what a fault of one item of a list expects, "percent" marks proportions that people may write in
 percent by mistake.
 """
 
 import unicodedata
 from collections.abc import Iterable
-from typing import Annotated, Any, Literal, Self
+from decimal import Decimal
+from typing import Annotated, Any, ClassVar, Literal, Self
 
 from pydantic import AfterValidator, BaseModel, ConfigDict, Field, JsonValue, model_validator
 from pydantic_core import PydanticCustomError
@@ -15,8 +16,10 @@ from pydantic_core import PydanticCustomError
 from coverage_lab.records import ROUTES, SIDES, Route, Side
 
 LARGEST_N = 10_000_000
+LARGEST_POPULATION = 1_000_000_000
 LARGEST_REPLICATES = 1_000_000_000
 LARGEST_SEED = 2**63 - 1
+MOST_EFFECT = 10_000  # the variance of a clustered sample over that of a simple one
 
 PERCENT: dict[str, JsonValue] = {"percent": True}
 
@@ -35,7 +38,7 @@ def _one_line(words: str) -> str:
     return _text(words)
 
 
-def _distinct(items: list[Any]) -> list[Any]:
+def distinct(items: list[Any]) -> list[Any]:
     """A list without repetitions."""
     if len(set(items)) < len(items):
         raise ValueError
@@ -75,7 +78,7 @@ OneLine = Annotated[str, AfterValidator(_one_line)]
 Share = Annotated[float, Field(gt=0, lt=1)]
 Size = Annotated[int, Field(ge=1, le=LARGEST_N)]
 Positive = Annotated[float, Field(gt=0)]
-Names = Annotated[list[str], AfterValidator(_distinct), Field(min_length=1)]
+Names = Annotated[list[str], AfterValidator(distinct), Field(min_length=1)]
 
 
 def _item(what: str) -> dict[str, JsonValue]:
@@ -87,6 +90,8 @@ class Table(BaseModel):
     """A table of the plan: nothing converted, nothing unknown, neither NaN nor infinity."""
 
     model_config = ConfigDict(strict=True, extra="forbid", frozen=True, allow_inf_nan=False)
+
+    optional: ClassVar[bool] = False  # whether a plan without this table is another plan than one with it left empty
 
 
 class Head(Table):
@@ -120,30 +125,45 @@ class OutcomeTable(Table):
 
     @model_validator(mode="after")
     def _holds_together(self) -> Self:
-        if self.expected is None and self.range is None:
-            raise between_keys("needs", "the key range or expected")
         if self.expected is not None and self.range is not None:
             low, high = self.range
             if not low <= self.expected <= high:
                 raise between_keys("field", f"a proportion within the planned range, {low} to {high}", "expected")
         return self
 
+    @property
+    def stated(self) -> bool:
+        """Whether the plan says where the true proportion should lie."""
+        return self.expected is not None or self.range is not None
+
+    @property
+    def middle(self) -> float | None:
+        """The expected proportion: as stated, else the middle of the range; sums are decimal, as people do them."""
+        if self.expected is not None or self.range is None:
+            return self.expected
+        low, high = (Decimal(repr(end)) for end in self.range)
+        return float((low + high) / 2)
+
 
 class SampleTable(Table):
-    """[sample]: the planned number of units."""
+    """[sample]: the planned number of units, and how far larger ones are looked at."""
 
     n: Size | None = Field(None, description=SIZE)
-    candidates: Annotated[list[Size], AfterValidator(_distinct), Field(min_length=1)] | None = Field(
+    candidates: Annotated[list[Size], AfterValidator(distinct), Field(min_length=1)] | None = Field(
         None, description=f"a list of different whole numbers from 1 to {LARGEST_N}", json_schema_extra=_item(SIZE)
     )
+    horizon: Size | None = Field(None, description=SIZE)
 
     @model_validator(mode="after")
     def _holds_together(self) -> Self:
-        if self.n is None and self.candidates is None:
-            raise between_keys("needs", "the key n or candidates")
         if self.n is not None and self.candidates is not None:
             raise between_keys("field", "to be left out, since n is given; only one of the two can be", "candidates")
         return self
+
+    @property
+    def sizes(self) -> tuple[int, ...]:
+        """The planned n, or the candidates."""
+        return (self.n,) if self.n is not None else tuple(self.candidates or ())
 
 
 class StandardTable(Table):
@@ -167,6 +187,13 @@ class DesignTable(Table):
     """[design]: how the sample is drawn. Which kinds exist is for the catalogue of designs to say."""
 
     kind: str = Field("simple", description="the name of a design")
+    population: Annotated[int, Field(ge=1, le=LARGEST_POPULATION)] | None = Field(
+        None, description=between(1, LARGEST_POPULATION)
+    )
+    design_effect: Annotated[float, Field(gt=0, le=MOST_EFFECT)] | None = Field(
+        None, description=f"a number above 0, at most {MOST_EFFECT}"
+    )
+    cluster_size: Size | None = Field(None, description=SIZE)
 
 
 class SimulationTable(Table):
@@ -179,7 +206,7 @@ class SimulationTable(Table):
         description="a list of proportions within the planned range, at least one",
         json_schema_extra=_item("a proportion within the planned range"),
     )
-    routes: Annotated[list[Route], AfterValidator(_distinct)] = Field(
+    routes: Annotated[list[Route], AfterValidator(distinct)] = Field(
         list(ROUTES),
         min_length=1,
         description=f"a list of {one_of(ROUTES)}, or both",
@@ -192,14 +219,3 @@ class MethodsTable(Table):
 
     only: Names | None = Field(None, description=NAMES, json_schema_extra=_item("the name of a method"))
     prefer: Names | None = Field(None, description=NAMES, json_schema_extra=_item("the name of a method"))
-
-
-TABLES: dict[str, type[Table]] = {
-    "study": StudyTable,
-    "outcome": OutcomeTable,
-    "sample": SampleTable,
-    "standard": StandardTable,
-    "design": DesignTable,
-    "simulation": SimulationTable,
-    "methods": MethodsTable,
-}

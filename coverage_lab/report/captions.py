@@ -45,6 +45,24 @@ def coverage_by_n(saved: Saved) -> Words:
     return caption, findings
 
 
+def saw(saved: Saved) -> Words:
+    """Worst coverage against n."""
+    document = saved.document
+    told = []
+    for _, beside in saved.steady.groupby("planned"):
+        for name in pair(document):
+            rows = beside[beside["method"] == name]
+            if not rows.empty:
+                low, high = (share(1 - float(rows["worst_miss"].agg(pick)), "down") for pick in ("max", "min"))
+                between = f"n = {count(int(rows['n'].min()))} to {count(int(rows['n'].max()))}"
+                told.append(f"{between}: {label_of(document, name)} {low} to {high} at worst")
+    caption = (
+        "Worst interval coverage in the planned range at every n around the planned one, for the methods that may be "
+        f"named and plus-or-minus; exact at each n. The number evaluated is seldom exactly the number planned. {SCALE}"
+    )
+    return caption, f"{'; '.join(told)}."
+
+
 def extremes(saved: Saved) -> Words:
     """Worst and mean coverage per method."""
     document = saved.document

@@ -1,6 +1,6 @@
 """Figures of interval coverage against the true proportion, and over true proportion and n."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from itertools import pairwise
 
 import numpy as np
@@ -39,6 +39,8 @@ LABELS = 1.42  # inches to the right of a panel
 LABEL_GAP = 0.43  # inches between the middles of two labels of up to three lines
 SHADES = ("#08306b", "#2b6fb3", "#7fb2dc", "#c9dcee", "#f4f7fa")  # falling lightness = falling coverage; prints in grey
 MOST_ROWS_LABELLED = 16
+
+Mark = tuple[str, float, float, str, str]  # words, right end x and y, colour, weight
 
 
 def panels(document: Document) -> list[int]:
@@ -106,7 +108,8 @@ def _coverage_panel(axes: Axes, saved: Saved, n: int) -> None:
                 zorder=5,
             )
     _points(axes, saved, n, styles)
-    _labels(axes, document, n, {name: line for name, line in lines.items() if styles[name].emphasised})
+    marks = [_line_mark(document, name, n, line) for name, line in lines.items() if styles[name].emphasised]
+    label_lines(axes, document, marks, PANEL)
 
 
 def _lines(saved: Saved, n: int) -> Mapping[str, pd.DataFrame]:
@@ -123,7 +126,7 @@ def _ground(axes: Axes, document: Document) -> None:
         axes.axvspan(low, high, color=WASH, lw=0, zorder=0)
     else:
         axes.axvline(low, color=RULE, lw=4, zorder=0)
-    for (_, value), dashes in zip(_levels(document), ((), (1, 2)), strict=False):
+    for (_, value), dashes in zip(level_lines(document), ((), (1, 2)), strict=False):
         axes.axhline(value, color=INK, lw=0.8, ls=(0, dashes or None), zorder=1)
 
 
@@ -141,14 +144,18 @@ def _points(axes: Axes, saved: Saved, n: int, styles: Mapping[str, Look]) -> Non
             )  # fmt: skip
 
 
-def _labels(axes: Axes, document: Document, n: int, lines: Mapping[str, pd.DataFrame]) -> None:
-    """What each emphasised line and each level is, beside its right end, no label over another."""
+def label_lines(axes: Axes, document: Document, marks: Sequence[Mark], panel: float) -> None:
+    """What each line and each level is, beside its right end, no label over another; `panel` is the height, inches."""
     right = float(axes.get_xlim()[1])
-    marks = [_line_mark(document, name, n, line) for name, line in lines.items()]
-    marks += [(words, right, value, SOFT, "normal") for words, value in _levels(document)]
-    heights = [axes.transAxes.inverted().transform(axes.transData.transform((x, y)))[1] for _, x, y, _, _ in marks]
-    places = spread(heights, LABEL_GAP / PANEL, 0.05, 0.96)
-    for (words, x, y, colour, weight), height in zip(marks, places, strict=True):
+    levels = ((words, right, value, SOFT, "normal") for words, value in level_lines(document))
+    label_ends(axes, [*marks, *levels], panel)
+
+
+def label_ends(axes: Axes, listed: Sequence[Mark], panel: float) -> None:
+    """Words beside the right ends of lines, no label over another; `panel` is the height in inches."""
+    heights = [axes.transAxes.inverted().transform(axes.transData.transform((x, y)))[1] for _, x, y, _, _ in listed]
+    places = spread(heights, LABEL_GAP / panel, 0.05, 0.96)
+    for (words, x, y, colour, weight), height in zip(listed, places, strict=True):
         axes.annotate(
             words, xy=(x, y), xytext=(1.07, height), textcoords="axes fraction", color=colour, size=7.6, va="center",
             linespacing=1.1, annotation_clip=False, weight=weight,
@@ -156,7 +163,7 @@ def _labels(axes: Axes, document: Document, n: int, lines: Mapping[str, pd.DataF
         )  # fmt: skip
 
 
-def _line_mark(document: Document, name: str, n: int, line: pd.DataFrame) -> tuple[str, float, float, str, str]:
+def _line_mark(document: Document, name: str, n: int, line: pd.DataFrame) -> Mark:
     """Label, right end, colour and weight of one line: 'Wilson score / worst 92.7 %'."""
     row = row_of(document, name, n)
     words = wrapped(label(document, name), 17)
@@ -167,7 +174,7 @@ def _line_mark(document: Document, name: str, n: int, line: pd.DataFrame) -> tup
     return words, float(end["p"]), float(end["coverage"]), looks(document)[name].colour, weight
 
 
-def _levels(document: Document) -> list[tuple[str, float]]:
+def level_lines(document: Document) -> list[tuple[str, float]]:
     """The levels drawn as lines across the panel."""
     alpha = document["alpha"]
     nominal, floor = 1 - alpha, 1 - alpha * document["standard"]["worst_miss"]

@@ -13,13 +13,16 @@ from numpy.typing import NDArray
 from coverage_lab.checks import InputFault, shown
 from coverage_lab.plan_text import plan_digest, plan_text
 from coverage_lab.records import Audit
+from coverage_lab.report.chapters import chapters, markdown, protocol_title
 from coverage_lab.report.document import FORMAT, audit_document
-from coverage_lab.report.protocol import protocol
 from coverage_lab.report.staging import staged
+from coverage_lab.report.word_file import word_file
 
 DATA_FILES = (
-    *("audit.json", "methods.csv", "cells.csv", "curve.csv", "interval-table.csv", "plan.toml", "protocol.md"),
+    *("audit.json", "methods.csv", "cells.csv", "curve.csv", "steady.csv", "interval-table.csv", "plan.toml"),
+    "protocol.md",
 )
+WORD_FILE = "protocol.docx"  # only where python-docx is installed
 PAGE = "report.html"
 
 CELLS = (
@@ -27,13 +30,19 @@ CELLS = (
     *("outside_unit_rate", "zero_width_rate", "no_data_rate", "draws"),
 )
 CURVE = ("n", "p", "method", "coverage", "mean_width")
+STEADY = ("planned", "n", "method", "worst_miss", "mean_miss")
+METHODS = ("n", "method", "label", "applies", "passes")
 TABLE = ("events", "lower", "upper")
 COUNTS = ("draws", "simulated_replicates", "events")
 WORDS = ("method", "label", "family", "source", "formula", "ends", "faults", "reason", "minimum_is", "route", "why")
-WHOLE = ("n", "events")
+WHOLE = ("n", "events", "planned")
 JUDGED = ("passes", "applies")
 JUDGED_AS = {"True": True, "False": False}  # anything else is None: not decided
 ABSENT = ("reason", "minimum_is")  # words that may be missing, as against empty
+KEYS = (
+    *("plan", "confidence", "side", "alpha", "standard", "methods", "verdict", "by_n", "cross_check", "cautions"),
+    "provenance",
+)
 SHORTENED = "# only outcomes with a probability over 1e-12 somewhere in the planned range are listed\n"
 
 
@@ -41,14 +50,17 @@ SHORTENED = "# only outcomes with a probability over 1e-12 somewhere in the plan
 class Saved:
     """A report folder's data as read back: all that figures and page are made from.
 
-    document: audit.json. methods, cells, curve, table: the CSV files of those names (table: interval-table.csv).
+    document: audit.json. methods, cells, curve, steady, table: the CSV files of those names (table:
+    interval-table.csv). word_file: whether protocol.docx lies beside them.
     """
 
     document: dict[str, Any]
     methods: pd.DataFrame
     cells: pd.DataFrame
     curve: pd.DataFrame
+    steady: pd.DataFrame
     table: pd.DataFrame
+    word_file: bool = False
 
 
 def save(audit: Audit, folder: Path, overwrite: bool = False) -> Path:
@@ -59,7 +71,7 @@ def save(audit: Audit, folder: Path, overwrite: bool = False) -> Path:
         OSError: the folder cannot be written.
     """
     check_target(folder, audit.plan.document, overwrite)
-    with staged(folder) as stage:
+    with staged(folder, [WORD_FILE]) as stage:
         write_data(audit, stage)
     return folder
 
@@ -71,10 +83,16 @@ def write_data(audit: Audit, into: Path) -> None:
     _write(into / "methods.csv", _csv(audit.methods))
     _write(into / "cells.csv", _csv(audit.cells, CELLS))
     _write(into / "curve.csv", _csv(audit.curve, CURVE))
+    _write(into / "steady.csv", _csv(audit.steady, STEADY))
     shortened = 0 < len(audit.table) < audit.verdict.n + 1
     _write(into / "interval-table.csv", _csv(audit.table, TABLE) + (SHORTENED if shortened else ""))
     _write(into / "plan.toml", plan_text(audit.plan.document))
-    _write(into / "protocol.md", protocol(document))
+    told = chapters(document, audit.table)
+    title = protocol_title(document)
+    _write(into / "protocol.md", markdown(title, told))
+    word = word_file(title, told)
+    if word is not None:
+        (into / WORD_FILE).write_bytes(word)
 
 
 def load(folder: Path) -> Saved:
@@ -82,13 +100,19 @@ def load(folder: Path) -> Saved:
 
     Raises:
         OSError: a file is missing or unreadable.
-        InputFault: audit.json is not one of ours.
+        InputFault: audit.json is not one of ours, or a file is damaged.
     """
     document = _document(folder / "audit.json")
     if document is None:
         raise InputFault(f"{folder / 'audit.json'}: expected an audit saved by coverage-lab, format {FORMAT!r}")
-    tables = [_read_csv(folder / f"{name}.csv") for name in ("methods", "cells", "curve", "interval-table")]
-    return Saved(document, *tables)
+    missing = [key for key in KEYS if key not in document]
+    if missing:
+        raise InputFault(f"{folder / 'audit.json'}: expected the keys {', '.join(KEYS)}; {', '.join(missing)} missing")
+    columns = {"methods": METHODS, "cells": CELLS, "curve": CURVE, "steady": STEADY, "interval-table": TABLE}
+    methods, cells, curve, steady, table = (
+        _read_csv(folder / f"{name}.csv", wanted) for name, wanted in columns.items()
+    )
+    return Saved(document, methods, cells, curve, steady, table, (folder / WORD_FILE).is_file())
 
 
 def check_target(folder: Path, plan_document: Mapping[str, Any], overwrite: bool) -> None:
@@ -137,10 +161,16 @@ def _csv(frame: pd.DataFrame, first: tuple[str, ...] = ()) -> str:
     return frame.reindex(columns=columns).assign(**counts).to_csv(index=False, lineterminator="\n")
 
 
-def _read_csv(path: Path) -> pd.DataFrame:
+def _read_csv(path: Path, wanted: tuple[str, ...]) -> pd.DataFrame:
     """The frame as it was saved: words stay words, also when they look like a number or like a missing value."""
-    frame = pd.read_csv(path, dtype=object, keep_default_na=False, comment=_comment(path))
-    return pd.DataFrame({name: _read(str(name), frame[name].to_numpy(dtype=object)) for name in frame.columns})
+    try:
+        frame = pd.read_csv(path, dtype=object, keep_default_na=False, comment=_comment(path))
+        absent = [name for name in wanted if name not in frame.columns]
+        if not absent:
+            return pd.DataFrame({name: _read(str(name), frame[name].to_numpy(dtype=object)) for name in frame.columns})
+    except ValueError as error:  # cells that are no numbers, rows of another length, text that is not UTF-8
+        raise InputFault(f"{path}: expected the table that an audit saved, but: {error}") from None
+    raise InputFault(f"{path}: expected the columns {', '.join(wanted)}; {', '.join(absent)} missing")
 
 
 def _read(name: str, texts: NDArray[np.object_]) -> pd.Series:

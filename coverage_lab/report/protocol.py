@@ -29,19 +29,6 @@ TARGETS = {
 }
 
 
-def protocol(document: Document) -> str:
-    """The text for the protocol, as Markdown."""
-    title = one_line(document["plan"].get("title") or "Untitled plan")
-    parts = [f"**{heading}.** {text}" for heading, text in protocol_parts(document)]
-    cautions = [f"- {caution}" for caution in document["cautions"]]
-    return (
-        "\n\n".join(
-            [f"# {title}: interval method, text for the protocol", *parts, "**Cautions.**", "\n".join(cautions)]
-        )
-        + "\n"
-    )
-
-
 def protocol_parts(document: Document) -> list[tuple[str, str]]:
     """The protocol text as (heading, paragraph); what the plan leaves open is a marked blank."""
     verdict = document["verdict"]
@@ -138,8 +125,8 @@ def _computation(document: Document) -> str:
 
 
 def one_line(words: object) -> str:
-    """The user's words on one line, harmless in Markdown."""
-    return " ".join(str(words).split()).replace("<", r"\<")
+    """Somebody's words on one line."""
+    return " ".join(str(words).split())
 
 
 def pieces(text: str) -> list[tuple[str, bool]]:

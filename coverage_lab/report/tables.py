@@ -5,6 +5,8 @@ from dataclasses import dataclass
 
 import pandas as pd
 
+from coverage_lab.report.columns import Columns, common, share_decimals
+from coverage_lab.report.columns import columns as columns_of
 from coverage_lab.report.figures import paired
 from coverage_lab.report.folder import Saved
 from coverage_lab.report.style import catalogue_order, chief, own, runner_up
@@ -15,11 +17,10 @@ from coverage_lab.report.words import (
     Row,
     count,
     label_of,
-    least,
     limit,
     limit_places,
-    place,
-    points,
+    place_places,
+    points_places,
     row_of,
     share,
     sizes,
@@ -61,6 +62,7 @@ class Table:
     columns: tuple[Column, ...]
     rows: tuple[tuple[Cell, ...], ...]
     sortable: bool = False
+    note: str = ""  # below the first row
 
 
 def relative(row: Row, reference: Row | None) -> float | None:
@@ -87,32 +89,31 @@ def methods(document: Document) -> Table:
     columns = (
         Column("Method", numeric=False),
         *(Column(title) for title in (*titles, width, "Relative to the first" if reference is None else "Relative")),
-        *(Column("Worst over all p"), Column("Meets the standard", numeric=False), Column("Why", numeric=False)),
+        *(Column("Worst over all p"), Column("Meets the standard", numeric=False)),
     )
-    rows = tuple(_method_row(row, reference) for row in document["methods"] if row["n"] == n)
+    here = [row for row in document["methods"] if row["n"] == n]
+    written = columns_of(document, here, reference)
+    rows = tuple(_method_row(row, reference, written) for row in here)
     caption = f"All methods at n = {count(n)}, in catalogue order; misses and widths are means over the planned range"
     return Table("methods", caption, columns, rows, sortable=True)
 
 
-def _method_row(row: Row, reference: Row | None) -> tuple[Cell, ...]:
+def _method_row(row: Row, reference: Row | None, written: Columns) -> tuple[Cell, ...]:
     """One method's cells; where it does not apply, its reason."""
     ratio = relative(row, reference)
     everywhere = row["everywhere"]["minimum_coverage"]
     mark = "chief" if reference is not None and row["method"] == reference["method"] else ""
-    why = row["why"] if row["applies"] else row["reason"] or ""
-    measured = row["minimum_coverage"] is not None
     return (
         Cell(row["label"], None, mark, f"#{anchor(row['method'])}"),
-        Cell(least(row) if measured else NOTHING, row["minimum_coverage"]),
-        Cell(place(row["minimum_at"]), row["minimum_at"]),
-        Cell(share(row["mean_coverage"], "down"), row["mean_coverage"]),
-        Cell(share(row["missed_below"]), row["missed_below"]),
-        Cell(share(row["missed_above"]), row["missed_above"]),
-        Cell(points(row["mean_width"]), row["mean_width"]),
+        Cell(written.worst(row), row["minimum_coverage"]),
+        Cell(written.place(row["minimum_at"]), row["minimum_at"]),
+        Cell(written.coverage(row["mean_coverage"]), row["mean_coverage"]),
+        Cell(written.miss(row["missed_below"]), row["missed_below"]),
+        Cell(written.miss(row["missed_above"]), row["missed_above"]),
+        Cell(written.width(row["mean_width"]), row["mean_width"]),
         Cell(NOTHING if ratio is None else f"{ratio:.2f}", ratio),
-        Cell(share(everywhere, "down"), everywhere),
+        Cell(written.coverage(everywhere), everywhere),
         passes(row),
-        Cell(why, None, "small"),
     )
 
 
@@ -125,26 +126,28 @@ def instead(document: Document) -> Table:
     """The chief method, the runner-up, the user's own and plus-or-minus, side by side."""
     n, main = document["verdict"]["n"], chief(document)
     reference = row_of(document, main, n)
+    found = [(row_of(document, name, n), role) for name, role in _roles(document).items()]
+    shown = [(row, role) for row, role in found if row is not None and row["minimum_coverage"] is not None]
+    written = columns_of(document, [row for row, _ in shown], reference)
     rows = []
-    for name, role in _roles(document).items():
-        row = row_of(document, name, n)
-        if row is not None and row["minimum_coverage"] is not None:
-            head = Cell(f"{row['label']}, {role}" if role else row["label"], None, "chief" if name == main else "")
-            rows.append((head, *_compared(row, reference)))
-    titles = ("Worst coverage", "at p", "Mean coverage", SHORT_WIDTHS[document["side"]].capitalize(), "Compared")
-    columns = (Column("Method", numeric=False), *map(Column, titles), Column("Meets the standard", numeric=False))
-    return Table("instead", "What it delivers, and what others would have delivered instead", columns, tuple(rows))
+    for row, role in shown:
+        mark = "chief" if row["method"] == main else ""
+        head = Cell(f"{row['label']}, {role}" if role else row["label"], None, mark)
+        rows.append((head, *_compared(row, reference, written)))
+    titles = ("Worst coverage", "at p", "Mean coverage", SHORT_WIDTHS[document["side"]].capitalize(), "Width compared")
+    heads = (Column("Method", numeric=False), *map(Column, titles), Column("Meets the standard", numeric=False))
+    return Table("instead", "What it delivers, and what others would have delivered instead", heads, tuple(rows))
 
 
-def _compared(row: Row, reference: Row | None) -> tuple[Cell, ...]:
+def _compared(row: Row, reference: Row | None, written: Columns) -> tuple[Cell, ...]:
     """One method's figures beside the reference's width."""
     ratio = relative(row, reference)
     is_reference = reference is not None and row["method"] == reference["method"]
     return (
-        Cell(least(row), row["minimum_coverage"]),
-        Cell(place(row["minimum_at"]), row["minimum_at"]),
-        Cell(share(row["mean_coverage"], "down"), row["mean_coverage"]),
-        Cell(points(row["mean_width"]), row["mean_width"]),
+        Cell(written.worst(row), row["minimum_coverage"]),
+        Cell(written.place(row["minimum_at"]), row["minimum_at"]),
+        Cell(written.coverage(row["mean_coverage"]), row["mean_coverage"]),
+        Cell(written.width(row["mean_width"]), row["mean_width"]),
         Cell("reference" if is_reference else times(ratio), ratio),
         passes(row),
     )
@@ -168,11 +171,13 @@ def by_n(document: Document) -> Table | None:
         return None
     titles = ("Worst interval coverage", "Mean interval coverage", SHORT_WIDTHS[document["side"]].capitalize())
     columns = (Column("n"), Column("Method", numeric=False), *map(Column, titles), Column("Holds from"), Column("to"))
-    rows = tuple(_verdict_row(document, verdict) for verdict in verdicts)
+    named = [row_of(document, verdict["method"], verdict["n"]) for verdict in verdicts]
+    written = columns_of(document, (row for row in named if row is not None))
+    rows = tuple(_verdict_row(document, verdict, written) for verdict in verdicts)
     return Table("by-n", "The verdict at each planned n", columns, rows)
 
 
-def _verdict_row(document: Document, verdict: Row) -> tuple[Cell, ...]:
+def _verdict_row(document: Document, verdict: Row, written: Columns) -> tuple[Cell, ...]:
     """One n's verdict."""
     row = row_of(document, verdict["method"], verdict["n"])
     chosen = verdict["n"] == document["verdict"]["n"]
@@ -184,9 +189,9 @@ def _verdict_row(document: Document, verdict: Row) -> tuple[Cell, ...]:
     return (
         head,
         Cell(row["label"] + (", too small to learn from" if verdict["too_small"] else "")),
-        Cell(least(row), row["minimum_coverage"]),
-        Cell(share(row["mean_coverage"], "down"), row["mean_coverage"]),
-        Cell(points(row["mean_width"]), row["mean_width"]),
+        Cell(written.worst(row), row["minimum_coverage"]),
+        Cell(written.coverage(row["mean_coverage"]), row["mean_coverage"]),
+        Cell(written.width(row["mean_width"]), row["mean_width"]),
         Cell(share(low, "up"), low),
         Cell(share(high, "down"), high),
     )
@@ -198,12 +203,13 @@ def worst_by_n(document: Document) -> Table | None:
     if not 2 <= len(listed) <= MOST_SIZES:
         return None
     columns = (Column("Method", numeric=False), *(Column(f"n = {count(n)}") for n in listed))
+    written = columns_of(document, ())
     rows = []
     for name in catalogue_order(document):
         found = [row_of(document, name, n) for n in listed]
         cells = [
             Cell(NOTHING) if row is None or row["minimum_coverage"] is None
-            else Cell(share(row["minimum_coverage"], "down"), row["minimum_coverage"], passes(row).mark)
+            else Cell(written.coverage(row["minimum_coverage"]), row["minimum_coverage"], passes(row).mark)
             for row in found
         ]  # fmt: skip
         rows.append((Cell(label_of(document, name)), *cells))
@@ -250,7 +256,8 @@ def _block(saved: Saved, block: pd.DataFrame, shown: Sequence[str]) -> Table:
     )
     first, last = int(block["events"].iloc[0]), int(block["events"].iloc[-1])
     columns = (Column("Events"), *(Column(name.capitalize()) for name in shown))
-    return Table(f"outcomes-{first}", f"{count(first)} to {count(last)} events", columns, rows)
+    zero = "Not zero risk; no change of side afterwards." if first == 0 else ""
+    return Table(f"outcomes-{first}", f"{count(first)} to {count(last)} events", columns, rows, note=zero)
 
 
 def simulated(saved: Saved) -> Table | None:
@@ -262,15 +269,18 @@ def simulated(saved: Saved) -> Table | None:
     if name is None or drawn.empty or len(drawn) > MOST_ROWS:
         return None
     both = paired(cells).set_index("p")
+    decimals = share_decimals(document["alpha"]) + 1
+    errors = common([points_places(float(value)) for value in drawn["standard_error"] if value > 0], 2)
+    written = Columns(decimals, common([place_places(float(p)) for p in drawn["p"]], 1), errors)
     rows = []
     for row in drawn.to_dict("records"):
         known = both.loc[row["p"]] if row["p"] in both.index else None
         rows.append(
             (
-                Cell(place(row["p"]), row["p"]),
-                Cell(NOTHING if known is None else share(known["coverage_enumerated"])),
-                Cell(share(row["coverage"])),
-                Cell(points(row["standard_error"])),
+                Cell(written.place(row["p"]), row["p"]),
+                Cell(NOTHING if known is None else written.coverage(known["coverage_enumerated"], "nearest")),
+                Cell(written.coverage(row["coverage"], "nearest")),
+                Cell(written.width(row["standard_error"])),
                 Cell(NOTHING if known is None else f"{known['z']:+.2f}".replace("-", "\u2212")),
             )
         )

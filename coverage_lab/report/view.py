@@ -5,19 +5,20 @@ from dataclasses import dataclass
 from typing import Any
 
 from coverage_lab.plan_text import plan_text
-from coverage_lab.report import tables
+from coverage_lab.report import box, tables
+from coverage_lab.report.chapters import chapters
 from coverage_lab.report.folder import Saved
-from coverage_lab.report.protocol import pieces, protocol_parts
+from coverage_lab.report.protocol import pieces
 from coverage_lab.report.style import chief, stretched
-from coverage_lab.report.view_study import agreement, plan_rows, simulation_parts
+from coverage_lab.report.view_study import beside_alpha, plan_rows, simulation_parts
 from coverage_lab.report.words import (
     NOUNS,
     WIDTHS,
     Document,
     Row,
+    agreement,
     count,
     how_sure,
-    joined,
     label_of,
     least,
     level,
@@ -29,9 +30,11 @@ from coverage_lab.report.words import (
     share,
     simulation_words,
     sizes,
+    steady_words,
     weighting,
 )
 from coverage_lab.rounding import percent
+from coverage_lab.sentences import OF_SIMULATION
 
 REFERENCES = (
     "Bradley JV (1978). Robustness? British Journal of Mathematical and Statistical Psychology 31:144–152. "
@@ -71,7 +74,7 @@ def page_content(saved: Saved) -> dict[str, Any]:
         "rulers": rulers(document),
         "bounds": tables.bounds(document),
         "by_n": tables.by_n(document),
-        "brief_cautions": [SENTENCE.split(caution)[0] for caution in document["cautions"]],
+        "brief_cautions": brief_cautions(document),
         "cautions": document["cautions"],
         "plan_rows": plan_rows(document),
         "plan_text": plan_text(document["plan"]),
@@ -80,7 +83,15 @@ def page_content(saved: Saved) -> dict[str, Any]:
         "described": [_described(row) for row in document["methods"] if row["n"] == verdict["n"]],
         "outcomes": tables.outcomes(saved),
         "outcome_words": outcome_words(saved),
-        "protocol": [(heading, pieces(text)) for heading, text in protocol_parts(document)],
+        "box": box.answers(saved),
+        "serves": box.serves(saved) if verdict["method"] is not None else "",
+        "at_zero": box.at_zero(saved),
+        "no_box": elsewhere(saved),
+        "chapters": {
+            chapter.name: [(lead, pieces(text)) for lead, text in chapter.parts]
+            for chapter in chapters(document, saved.table)
+        },
+        "word_file": saved.word_file,
         "aims": simulation_parts(saved),
         "simulated": tables.simulated(saved),
         "agreement": agreement(document),
@@ -88,6 +99,13 @@ def page_content(saved: Saved) -> dict[str, Any]:
         "sources": sources(document),
         "provenance": document["provenance"],
     }
+
+
+def brief_cautions(document: Document) -> list[str]:
+    """What stands beside the verdict: first sentences, less those that stand where they belong."""
+    placed = (beside_alpha(document), OF_SIMULATION)
+    listed = [caution for caution in document["cautions"] if caution not in placed]
+    return [SENTENCE.split(caution)[0] for caution in listed]
 
 
 def _about(document: Document) -> list[str]:
@@ -129,10 +147,10 @@ def facts(document: Document, row: Row) -> list[Fact]:
 
 
 def notes(document: Document, row: Row | None) -> list[str]:
-    """Sentences below the figures: the simulation, plus-or-minus instead, steadiness, balance, what is too small."""
+    """Sentences below the figures: the simulation, plus-or-minus instead, steadiness."""
     verdict = document["verdict"]
     found = [simulation_words(row, document)] if row is not None else []
-    found += [_plus_or_minus(document), _steady(verdict), verdict["balance"]]
+    found += [_plus_or_minus(document), steady_words(verdict)]
     return [sentence for sentence in found if sentence]
 
 
@@ -145,16 +163,6 @@ def _plus_or_minus(document: Document) -> str | None:
         f"Plus-or-minus (Wald) would have claimed {percent(document['confidence'])} and delivered {least(row)} at p = "
         f"{place(row['minimum_at'])}, {share(row['mean_coverage'], 'down')} on average."
     )
-
-
-def _steady(verdict: Row) -> str | None:
-    """Whether the verdict survives a few units more or less."""
-    if not verdict["steady"]:
-        return None
-    listed = [item["n"] for item in verdict["steady"]]
-    failing = [count(item["n"]) for item in verdict["steady"] if not item["passes"]]
-    met = f"not met at n = {joined(failing)}" if failing else "met at each of them too"
-    return f"A few units more or less: at n = {count(min(listed))} to {count(max(listed))} the standard is {met}."
 
 
 def closest(document: Document) -> str | None:
@@ -188,7 +196,9 @@ def sources(document: Document) -> list[str]:
 def _described(row: Row) -> dict[str, str]:
     """A method for those who want to know: formula, ends, faults, source."""
     names = ("label", "method", "family", "formula", "ends", "faults", "source")
-    return {"anchor": tables.anchor(row["method"]), **{name: str(row[name] or "") for name in names}}
+    verdict = tables.passes(row).text
+    why = f"{verdict}: {row['why']}" if row["applies"] else f"not applicable: {row['reason'] or 'no reason given'}"
+    return {"anchor": tables.anchor(row["method"]), "why": why, **{name: str(row[name] or "") for name in names}}
 
 
 def outcome_words(saved: Saved) -> str:
@@ -198,8 +208,17 @@ def outcome_words(saved: Saved) -> str:
         return "No method is named, so there is no table of intervals."
     if saved.table.empty:
         return "The named method needs more than the events count, so there is no table of intervals."
-    name, n = label_of(saved.document, verdict["method"]), verdict["n"]
-    which = f"{name}, {level(saved.document)}, n = {count(n)} and no other n. Limits are rounded outward."
+    which = f"{box.serves(saved)}. Limits are rounded outward."
+    if len(saved.table) <= verdict["n"]:
+        which += " Only counts with a probability over 1e-12 somewhere in the planned range are listed."
     if len(saved.table) > tables.MOST_ROWS + 1:
-        return f"{which} The table has {count(len(saved.table))} rows: too long for a page."
+        return f"{which} The table has {count(len(saved.table))} rows, too long to print here: it is in the file."
     return which
+
+
+def elsewhere(saved: Saved) -> str:
+    """Why the page holds no box, and the command that answers instead."""
+    if saved.table.empty or len(saved.table) <= box.MOST_ANSWERS:
+        return ""
+    n = saved.document["verdict"]["n"]
+    return f"At n = {count(n)} this page holds no box to read intervals from; the command that answers, in its folder:"

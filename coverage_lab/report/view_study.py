@@ -21,6 +21,7 @@ from coverage_lab.report.words import (
     standard_words,
     weighting,
 )
+from coverage_lab.sentences import of_side
 
 
 def plan_rows(document: Document) -> list[tuple[str, list[tuple[str, bool]]]]:
@@ -38,13 +39,18 @@ def plan_rows(document: Document) -> list[tuple[str, list[tuple[str, bool]]]]:
         ("Basis of the range", study.get("range_basis") or "[basis: to be stated]"),
         ("Weighting of the range", weighting(document)),
         ("n", joined(count(n) for n in sizes(document))),
-        ("Confidence and side", f"{level(document)}; α = {document['alpha']:g}"),
+        ("Confidence and side", f"{level(document)}; α = {document['alpha']:g}. {beside_alpha(document)}"),
         ("Standard", f"{document['standard']['kind']}: {standard_words(document)}"),
         ("Sampling model", f"{plan['design']['kind']} random sample"),
         ("Simulation", f"{count(drawn['replicates'])} draws at {each(len(drawn['grid']))}, seed {drawn['seed']}"),
         ("Who may be named", f"{listed}, first choice first"),
     ]
     return [(name, pieces(str(words))) for name, words in rows]
+
+
+def beside_alpha(document: Document) -> str:
+    """What α means for the other kind of interval."""
+    return of_side(document["confidence"], document["alpha"], document["side"])
 
 
 def simulation_parts(saved: Saved) -> list[tuple[str, str]]:
@@ -93,21 +99,4 @@ def _error(applied: Sequence[Row]) -> str:
         return ""
     return (
         f" The Monte Carlo standard error of a simulated coverage is at most {points(max(errors))}, over all of them."
-    )
-
-
-def agreement(document: Document) -> str:
-    """What the cross-check found."""
-    check = document["cross_check"]
-    if check is None:
-        return "No cross-check: the plan leaves out one of the two routes."
-    largest = (
-        "a cell whose exact coverage is 0 or 1 disagrees"
-        if check["largest_z"] is None
-        else f"the largest |z| is {check['largest_z']:.2f}"
-    )
-    return (
-        f"Over {count(check['cells'])} cells (n, true proportion, method) {largest}. The smallest of their exact "
-        f"binomial p-values times their number (Bonferroni) is p = {check['p_value']:.2g}. The drawn samples against "
-        f"their exact law: chi-square p = {check['chi_square_p']:.2g}."
     )

@@ -2,7 +2,6 @@
 
 import math
 from collections.abc import Iterable, Mapping
-from decimal import Decimal
 from typing import Any
 
 from coverage_lab.rounding import Towards, percent, rounded
@@ -32,28 +31,39 @@ SHORT_WIDTHS = {"two-sided": "mean width", "upper": "mean excess", "lower": "mea
 
 
 def share(value: float | None, towards: Towards = "nearest") -> str:
-    """A share in percent, or a dash: 0.93412 -> '93.4 %'. An exact 95 % less the last digits of a double is 95 %."""
-    if value is None:
-        return NOTHING
-    lacking = Decimal(f"{1 - value:.9g}") if value <= 1 else Decimal(0)
-    return percent(float(1 - lacking) if 0 < value < 1 else value, towards)
+    """A share in percent, or a dash: 0.93412 -> '93.4 %'."""
+    return NOTHING if value is None else percent(value, towards)
 
 
 def place(p: float | None, towards: Towards = "nearest") -> str:
     """A true proportion in percent, three significant digits of p or of 1 - p: 0.0062392 -> '0.624 %'."""
     if p is None:
         return NOTHING
+    return percent(p, towards, place_places(p))
+
+
+def place_places(p: float) -> int:
+    """Decimals that three significant digits of p or of 1 - p take, in percent."""
     end = min(abs(p), abs(1 - p)) * 100
-    return percent(p, towards, 1 if end == 0 else max(1, 2 - math.floor(math.log10(end))))
+    return 1 if end == 0 else max(1, 2 - math.floor(math.log10(end)))
 
 
 def points(value: float | None) -> str:
     """A difference of proportions in percentage points, three significant digits: 0.05234 -> '5.23 points'."""
     if value is None:
         return NOTHING
-    hundred = value * 100
-    places = 0 if hundred == 0 else max(0, 2 - math.floor(math.log10(abs(hundred))))
-    return f"{float(rounded(hundred, min(places, 12))):,.{min(places, 12)}f} points"
+    return points_at(value, points_places(value))
+
+
+def points_places(value: float) -> int:
+    """Decimals that three significant digits of a difference in percentage points take."""
+    hundred = abs(value) * 100
+    return 0 if hundred == 0 else min(12, max(0, 2 - math.floor(math.log10(hundred))))
+
+
+def points_at(value: float, places: int) -> str:
+    """A difference in percentage points with so many decimals."""
+    return f"{float(rounded(value * 100, places)):,.{places}f} points"
 
 
 def times(ratio: float | None) -> str:
@@ -74,8 +84,6 @@ def limit_places(n: int) -> int:
 
 def limit(value: float, towards: Towards, places: int) -> str:
     """A limit in percent with fixed decimals, to be rounded outward: ('down' for lower limits, 'up' for upper)."""
-    if value in (0.0, 1.0):
-        return percent(value)
     return f"{rounded(value, places + 2, towards) * 100:.{places}f} %"
 
 
@@ -172,18 +180,64 @@ def simulation_words(row: Row, document: Document) -> str | None:
     drawn = row["simulated"]
     if drawn["coverage_min"] is None:
         return None
+    grid = sorted(document["plan"]["simulation"]["grid"])
+    over = f" ({range_words(grid[0], grid[-1])})" if len(grid) > 1 else ""
     studies = (
-        f"In {count(drawn['replicates'])} simulated studies at {each(len(document['plan']['simulation']['grid']))}"
+        f"In {count(drawn['replicates'])} simulated studies at {each(len(grid))}{over}, each a "
+        f"{document['plan']['design']['kind']} random sample of n = {count(row['n'])}, "
     )
+    what = f"{row['label']} {NOUNS[document['side']]}"
     if drawn["coverage_min"] == 1:
-        return f"{studies} every interval contained the true proportion."
+        return f"{studies}every {what} was right."
     return (
-        f"{studies} coverage was {percent(drawn['coverage_min'])} at its lowest "
-        f"(p = {place(drawn['coverage_min_at'])}) and {percent(drawn['coverage_mean'])} on average "
-        f"(Monte Carlo standard error at most {points(drawn['standard_error'])})."
+        f"{studies}the coverage of the {what} was {percent(drawn['coverage_min'])} at its lowest "
+        f"(p = {place(drawn['coverage_min_at'])}) and {percent(drawn['coverage_mean'])} on average (Monte Carlo "
+        f"standard error at most {points(drawn['standard_error'])}).{_missed(row, grid)}"
     )
+
+
+def _missed(row: Row, grid: list[float]) -> str:
+    """Why the simulation did not meet the exact minimum, when it lies between the proportions that were simulated."""
+    known, at = row["minimum_is"] == "certified", row["minimum_at"]
+    if (
+        not known
+        or row["simulated"]["coverage_min"] <= row["minimum_coverage"]
+        or any(abs(p - at) < 1e-9 for p in grid)
+    ):
+        return ""
+    return f" The exact minimum, at p = {place(at)}, is lower: it lies between the simulated proportions."
 
 
 def each(cells: int) -> str:
     """'each of 11 true proportions'."""
     return "the one true proportion" if cells == 1 else f"each of {count(cells)} true proportions"
+
+
+def steady_words(verdict: Row) -> str | None:
+    """Whether the verdict survives a few units more or less."""
+    if not verdict["steady"]:
+        return None
+    listed = [item["n"] for item in verdict["steady"]]
+    failing = [count(item["n"]) for item in verdict["steady"] if not item["passes"]]
+    around = f"{count(min(listed))} to {count(max(listed))}"
+    if failing:
+        return f"A few units more or fewer matter: of n = {around}, the standard is not met at n = {joined(failing)}."
+    return f"A few units more or fewer change nothing: the standard is met at every n from {around}."
+
+
+def agreement(document: Document) -> str:
+    """What the cross-check found."""
+    check = document["cross_check"]
+    if check is None:
+        return "No cross-check: the plan leaves out one of the two routes."
+    largest = (
+        "a cell whose exact coverage is 0 or 1 disagrees"
+        if check["largest_z"] is None
+        else f"the largest |z| is {check['largest_z']:.2f}"
+    )
+    return (
+        f"Simulated against enumerated coverage, over {count(check['cells'])} cells (n, true proportion, method): "
+        f"{largest}. The smallest of their exact "
+        f"binomial p-values times their number (Bonferroni) is p = {check['p_value']:.2g}. The drawn samples against "
+        f"their exact law: chi-square p = {check['chi_square_p']:.2g}."
+    )

@@ -1,7 +1,7 @@
 """Beyond the exact scan: a bracket says where to look; what is looked at there is stated with the answer.
 
-Targets on counts saw with n. A tooth is about 1/p long, and teeth reach across a band of about n/√(npq), the change of n
-that moves a chance by one point probability: so a band on both sides of the bracket's place is combed first.
+Targets on counts saw with n. A tooth is about 1/p long, and teeth reach across a band of about n/√(npq), the change of
+n that moves a chance by one point probability: so a band on both sides of the bracket's place is combed first.
 """
 
 import math
@@ -25,7 +25,7 @@ Check = Callable[[Counts], Flags]
 
 @dataclass(frozen=True)
 class Terrain:
-    """What decides how far and how densely to look: the p at which chances saw, and about how many events an n brings."""
+    """How far and how densely to look: the p at which chances saw, and about how many events an n brings."""
 
     p: float
     events: Callable[[int], float]

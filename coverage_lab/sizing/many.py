@@ -5,6 +5,8 @@ between two neighbouring limits it rises, then falls, and at a limit itself the 
 limits turn back (what covers is no run then) are left to the engine's own minimum.
 """
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import betainc
@@ -14,6 +16,7 @@ from coverage_lab.engine.minimum import SAME, Piece, minimum
 from coverage_lab.probability import at_least, at_most, betabinomial
 from coverage_lab.records import Array, Counts
 from coverage_lab.sizing.rows import Rows
+from coverage_lab.sizing.tails import outside_bounds
 
 
 def worst(rows: Rows, lower: Array, upper: Array, low: float, high: float) -> tuple[Array, Array]:
@@ -24,6 +27,8 @@ def worst(rows: Rows, lower: Array, upper: Array, low: float, high: float) -> tu
     row, p, beside, beside_lower = _single(rows, low) if low == high else _ends(rows, lower, upper, low, high)
     begin = _rank(rows, upper, row, beside)
     end = np.maximum(_rank(rows, lower, row, beside_lower), begin)
+    hopeful = _hopeful(rows, row, begin, end, p)
+    row, begin, end, p = row[hopeful], begin[hopeful], end[hopeful], p[hopeful]
     largest = _largest(row, _quick_miss(rows, row, begin, end, p), len(rows.n))
     row, begin, end, p = row[largest], begin[largest], end[largest], p[largest]
     miss = at_most(rows.first[row] + begin - 1, rows.n[row], p) + at_least(rows.first[row] + end, rows.n[row], p)
@@ -54,6 +59,15 @@ def _ends(rows: Rows, lower: Array, upper: Array, low: float, high: float) -> tu
 def _rank(rows: Rows, limits: Array, row: Counts, p: Array) -> Counts:
     """How many limits of its row lie left of each p: complex numbers sort by their real part first, here the row."""
     return np.asarray(np.searchsorted(rows.row + 1j * limits, row + 1j * p) - rows.start[row])
+
+
+def _hopeful(rows: Rows, row: Counts, begin: Counts, end: Counts, p: Array) -> Counts:
+    """The places whose miss rate can be the largest of their row, by two-sided bounds; usually one in ten."""
+    low, high = outside_bounds(rows.first[row] + begin, rows.first[row] + end, rows.n[row], p)
+    nothing = end == begin
+    best = np.zeros(len(rows.n))
+    np.maximum.at(best, row, np.where(nothing, 1.0, low))
+    return np.flatnonzero(np.where(nothing, 1.0, high) >= best[row])
 
 
 def _quick_miss(rows: Rows, row: Counts, begin: Counts, end: Counts, p: Array) -> Array:
@@ -89,22 +103,46 @@ def _by_engine(rows: Rows, lower: Array, upper: Array, between: tuple[float, flo
     return found.miss, found.at
 
 
+@dataclass(frozen=True)
 class Prior:
-    """What the mean over the range needs beside the limits, shared by all methods on the same rows; (flat,) each."""
+    """What the mean over the range needs beside the limits, shared by all methods on the same rows.
 
-    def __init__(self, rows: Rows, over: Range) -> None:
-        self.rows, self.over = rows, over
-        self.a, self.b = rows.events + over.prior[0], rows.trials - rows.events + over.prior[1]
-        self.weight = betabinomial(rows.events, rows.trials, *over.prior) / over.mass
-        self.at_low, self.at_high = betainc(self.a, self.b, over.low), betainc(self.a, self.b, over.high)
+    a, b, weight, at_low, at_high are (flat,): given x, p has a Beta(a, b) density; weight·I_t(a, b) is the chance of x
+    with p below t. `left_out` is the chance of all events that are not among the rows; (rows,).
+    """
+
+    rows: Rows
+    over: Range
+    a: Array
+    b: Array
+    weight: Array
+    at_low: Array
+    at_high: Array
+    left_out: Array
+
+    @classmethod
+    def on(cls, rows: Rows, over: Range) -> "Prior":
+        """On rows with every event that the range can produce."""
+        a, b = rows.events + over.prior[0], rows.trials - rows.events + over.prior[1]
+        weight = betabinomial(rows.events, rows.trials, *over.prior) / over.mass
+        at_low, at_high = betainc(a, b, over.low), betainc(a, b, over.high)
+        return cls(rows, over, a, b, weight, at_low, at_high, np.zeros(len(rows.n)))
+
+    def within(self, rows: Rows) -> "Prior":
+        """On rows of the same n with fewer events; the chance of the rest is summed, not subtracted from 1."""
+        place = (self.rows.start - self.rows.first)[rows.row] + rows.events
+        rest = self.weight * (self.at_high - self.at_low)
+        rest[place] = 0.0
+        columns = (column[place] for column in (self.a, self.b, self.weight, self.at_low, self.at_high))
+        return Prior(rows, self.over, *columns, left_out=self.rows.total(rest))
 
     def mean_miss(self, lower: Array, upper: Array) -> Array:
         """The mean miss rate over the range of every row, in closed form; (rows,).
 
         Every x that covers somewhere in the range must be among the events.
         """
-        covered = self._below(upper) - self._below(lower)
-        return np.maximum(1.0 - self.rows.total(self.weight * covered), 0.0)
+        missed = (self.at_high - self._below(upper)) + (self._below(lower) - self.at_low)
+        return self.left_out + self.rows.total(self.weight * missed)
 
     def _below(self, limit: Array) -> Array:
         """P(p < limit | x) with the limit held in the range; the incomplete beta only where it lies strictly inside."""

@@ -6,6 +6,7 @@ from functools import cached_property
 
 import numpy as np
 import pandas as pd
+from scipy.special import ndtri
 
 from coverage_lab.engine.bounds import evaluate
 from coverage_lab.engine.means import Range
@@ -19,7 +20,7 @@ from coverage_lab.sizing.rows import WIDE, Rows, blocks, joined, rows
 from coverage_lab.sizing.widths import Chances, assurance, expected, half_widths, largest_expected, peaks_at
 
 EVENTS = 40_000  # of one block and method: large enough to hide the calls, small enough for the progress line
-NARROW = 1.5  # standard errors beyond a limit's own reach within which events can still cover in the range
+NARROW = 0.8  # standard errors beyond a limit's own reach within which events can still cover in the range
 COVERAGE_COLUMNS = ("worst_miss", "minimum_at", "mean_miss")
 COLUMNS = (*COVERAGE_COLUMNS, "half_width", "assurance")
 
@@ -90,8 +91,8 @@ class _Block:
     def narrow(self) -> Rows:
         """The events whose intervals can meet the range, with those of `widths` when widths are asked for."""
         q = self.question
-        z = np.sqrt(-2 * np.log(q.tail))  # at least the normal quantile of the tail
-        near = rows(self.n, q.low, q.high, float((z + NARROW) ** 2 / 2))
+        z = max(float(-ndtri(q.tail)), 0.0)
+        near = rows(self.n, q.low, q.high, min((z + NARROW) ** 2 / 2, WIDE))
         return joined(near, self.widths) if "half_width" in q.columns or "assurance" in q.columns else near
 
     @cached_property
@@ -99,6 +100,11 @@ class _Block:
         """All events that the range can produce."""
         q = self.question
         return rows(self.n, min(q.low, q.expected), max(q.high, q.expected))
+
+    @cached_property
+    def prior(self) -> Prior:
+        """For the mean over the range, on all its events."""
+        return Prior.on(self.full, self.question.over)
 
     @cached_property
     def shared(self) -> dict[int, tuple[Chances, Prior | None]]:
@@ -109,7 +115,7 @@ class _Block:
         """The shared figures on these rows."""
         chances, found = self.shared.get(id(where), (Chances(where), None))
         if prior and found is None:
-            found = Prior(where, self.question.over)
+            found = self.prior.within(where)
         self.shared[id(where)] = chances, found
         return chances, found
 

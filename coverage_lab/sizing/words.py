@@ -94,9 +94,7 @@ def decision(target: Decision, found: Decided) -> str:
     )
 
 
-def nothing(
-    lacking: Sequence[str], labels: Sequence[str], horizon: int | None, best: Mapping[str, Any] | None
-) -> str:
+def nothing(lacking: Sequence[str], labels: Sequence[str], horizon: int | None, best: Mapping[str, Any] | None) -> str:
     """Which target no n meets, and the best that was found."""
     if not lacking:
         return "The plan sets no target for n."

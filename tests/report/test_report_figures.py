@@ -221,6 +221,24 @@ def test_the_heat_map_reads_the_curve(report: Report) -> None:
     assert classes[-3] == pytest.approx(0.925)
 
 
+@pytest.mark.parametrize(("name", "reach"), [("two-sided", 20), ("several", 6)])
+def test_the_saw_passes_through_the_planned_n(name: str, reach: int, report: Report) -> None:
+    saved = load(report(name))
+    n = saved.document["verdict"]["n"]
+    beside = saved.steady[saved.steady["planned"] == n]
+    assert sorted(set(beside["n"])) == list(range(n - reach, n + reach + 1))
+    here = beside[beside["n"] == n].set_index("method")
+    assert {"wald", *saved.document["verdict"]["prefer"]} == set(here.index)
+    for row in saved.document["methods"]:
+        if row["n"] == n and row["method"] in here.index:
+            assert here.loc[row["method"], "worst_miss"] == pytest.approx(1 - row["minimum_coverage"], abs=1e-12)
+
+
+def test_without_enumeration_there_is_no_saw(report: Report) -> None:
+    assert load(report("simulated")).steady.empty
+    assert not (report("simulated") / "figures/worst-by-n.png").exists()
+
+
 def test_the_alternative_text_states_the_finding(report: Report) -> None:
     saved = load(report("two-sided"))
     texts: dict[str, Words] = {picture.name: picture.words(saved) for picture in PICTURES if picture.wanted(saved)}

@@ -19,8 +19,9 @@ from coverage_lab.plan import make_plan, read_plan
 from coverage_lab.report import audit_document, check_target, folder, load, page, save, write
 from coverage_lab.report.document import plain
 from coverage_lab.report.staging import staged
+from coverage_lab.report.word_file import installed
 
-ALL = {*folder.DATA_FILES, "report.html"}
+ALL = {*folder.DATA_FILES, "report.html", *([folder.WORD_FILE] if installed() else [])}
 NAMES = sorted(PLANS)
 
 
@@ -35,7 +36,7 @@ def test_what_is_saved_reads_back_digit_for_digit(name: str, tmp_path: Path) -> 
     save(audit, tmp_path / "out")
     saved = load(tmp_path / "out")
     assert saved.document == audit_document(audit)
-    for frame in ("methods", "cells", "curve", "table"):
+    for frame in ("methods", "cells", "curve", "steady", "table"):
         made, read = getattr(audit, frame), getattr(saved, frame)
         assert len(made) == len(read)
         for column in made.columns:

@@ -15,7 +15,8 @@ from coverage_lab.report import load
 from coverage_lab.report.page import COLOURS, PICTURES, together
 from coverage_lab.report.style import chief
 from coverage_lab.report.tables import anchor
-from coverage_lab.report.words import points, row_of, share
+from coverage_lab.report.words import points_at, points_places, row_of, share
+from coverage_lab.rounding import percent
 
 Report = Callable[[str], Path]
 NAMES = sorted(PLANS)
@@ -104,7 +105,10 @@ def test_the_policy_names_the_digests_of_style_and_script(name: str, report: Rep
 def test_hostile_words_are_inert(report: Report) -> None:
     folder = report("hostile")
     tree = page_of(folder)
-    (script,) = tree.all("script")
+    data, script = tree.all("script")
+    assert data[0] == {"type": "application/json", "id": "box-limits"}
+    assert "<" not in data[2]
+    assert script[0] == {}
     assert script[2].startswith('"use strict"')
     assert all(attributes["src"].startswith("data:") for attributes, _, _ in tree.all("img"))
     assert "bold" not in [words for _, _, words in tree.all("b")]
@@ -148,12 +152,13 @@ def test_the_first_screen_says_how_good_how_sure_at_what_price_and_what_else(nam
     said = page_of(report(name)).by_id("verdict")
     verdict = document["verdict"]
     for method in (verdict["method"], "wald"):
-        row = row_of(document, method, verdict["n"])
+        row, named = row_of(document, method, verdict["n"]), row_of(document, verdict["method"], verdict["n"])
         assert row is not None
+        assert named is not None
         for figure in (
-            share(row["minimum_coverage"], "down"),
-            share(row["mean_coverage"], "down"),
-            points(row["mean_width"]),
+            percent(row["minimum_coverage"], "down", 1, fixed=True),
+            percent(row["mean_coverage"], "down", 1, fixed=True),
+            points_at(row["mean_width"], points_places(named["mean_width"])),
         ):
             assert figure in said
     assert "exact minimum, approached at p = " in said
@@ -256,6 +261,8 @@ def test_sections_follow_one_another_as_promised(report: Report) -> None:
             "methods",
             "intervals",
             "protocol",
+            "reviewer",
+            "summary",
             "simulation",
             "cautions",
             "references",
@@ -271,7 +278,7 @@ def test_the_method_table_holds_every_method_and_can_be_sorted(report: Report) -
     table = tree.by_id("t-methods")
     for label in audit.methods["label"]:
         assert label in table
-    assert "one-sided only" in table
+    assert "not applicable: one-sided only" in tree.by_id("m-second-order")
     sortable = [attributes for attributes, _, _ in tree.all("table") if attributes.get("class") == "sortable"]
     assert [attributes["id"] for attributes in sortable] == ["t-methods"]
     for name in audit.methods["method"]:

@@ -9,7 +9,8 @@ from hypothesis import strategies as st
 from report_audits import finished
 
 from coverage_lab.report import audit_document
-from coverage_lab.report.protocol import one_line, pieces, protocol, protocol_parts
+from coverage_lab.report.chapters import chapters, harmless, markdown, protocol_title
+from coverage_lab.report.protocol import one_line, pieces, protocol_parts
 from coverage_lab.report.words import (
     count,
     how_sure,
@@ -126,7 +127,7 @@ def test_how_sure_never_calls_a_search_exact() -> None:
 
 def test_the_protocol_says_everything_that_a_protocol_needs() -> None:
     document = audit_document(finished("two-sided"))
-    text = protocol(document)
+    text = markdown(protocol_title(document), chapters(document, finished("two-sided").table))
     named = next(entry for entry in document["methods"] if entry["method"] == "wilson")
     for words in (
         "crack found",
@@ -179,4 +180,19 @@ def test_pieces_keep_every_letter() -> None:
 
 
 def test_the_users_words_stay_on_one_line() -> None:
-    assert one_line("a\n# b <c>") == r"a # b \<c>"
+    assert one_line("a\n# b <c>") == "a # b <c>"
+
+
+@pytest.mark.parametrize(
+    ("words", "written"),
+    [
+        ("<script>", r"\<script>"),
+        ("![x](y)", r"!\[x\](y)"),
+        ("[x](y)", r"[x\](y)"),
+        ("*a* _b_ `c`", r"\*a\* \_b\_ \`c\`"),
+        ("[population: to be stated]", "[population: to be stated]"),
+        ("p ≤ 5 %, n = 250", "p ≤ 5 %, n = 250"),
+    ],
+)
+def test_markdown_of_the_users_does_nothing(words: str, written: str) -> None:
+    assert harmless(words) == written

@@ -22,8 +22,8 @@ from coverage_lab.sizing.recommend import chosen_rare, pick
 @pytest.fixture(scope="module")
 def fleet() -> Sizing:
     """± 2 points with 90 % assurance around 2 %, fleet of 6200, expecting to lose 5 %."""
-    asked = plan(0.01, 0.04, 0.02, methods=("wilson", "clopper-pearson", "jeffreys", "wald"), precision=Precision(0.02, 0.9))
-    asked = replace(asked, prefer=asked.methods[:2])
+    names = ("wilson", "clopper-pearson", "jeffreys", "wald")
+    asked = plan(0.01, 0.04, 0.02, methods=names, prefer=names[:2], precision=Precision(0.02, 0.9))
     return size(asked, Inflation(population=6200, loss=0.05))
 
 
@@ -40,10 +40,10 @@ def test_the_fleet(fleet: Sizing) -> None:
         "census": False,
     }
     assert verdict.sentence == (
-        "n = 380 units; then 359 in the finite population, 377 to make up for losses. Report the Wilson score interval at "
-        "95 % confidence. At n = 380 and at every larger n up to 2000: expected half-width at most 2 points at the worst "
-        "proportion of the planned range; half-width at most 2 points with probability at least 90 % at 2 %; coverage at "
-        "least 92.5 % everywhere in the range and 94.5 % on average."
+        "n = 380 units; then 359 in the finite population, 377 to make up for losses. Report the Wilson score interval "
+        "at 95 % confidence. At n = 380 and at every larger n up to 2000: expected half-width at most 2 points at the "
+        "worst proportion of the planned range; half-width at most 2 points with probability at least 90 % at 2 %; "
+        "coverage at least 92.5 % everywhere in the range and 94.5 % on average."
     )
 
 
@@ -64,8 +64,9 @@ def test_coverage_is_scanned_for_the_list_and_for_plus_or_minus_only(fleet: Sizi
 
 
 def test_what_the_plan_names_in_only_is_scanned_for_coverage() -> None:
-    asked = plan(methods=("wilson", "jeffreys"), prefer=("wilson",), document={"methods": {"only": ["wilson", "jeffreys"]}})
-    assert size(replace(asked, horizon=200)).by_method["jeffreys"]["coverage"] is not None
+    names = ("wilson", "jeffreys")
+    asked = plan(methods=names, prefer=names[:1], document={"methods": {"only": list(names)}}, horizon=200)
+    assert size(asked).by_method["jeffreys"]["coverage"] is not None
 
 
 def test_the_taught_formula_beside_what_it_delivers(fleet: Sizing) -> None:
@@ -108,8 +109,8 @@ def test_reliability_above_ninety_per_cent() -> None:
     assert (answer.decision.found.first_n, answer.verdict.n, answer.decision.critical) == (100, 114, 109)
     assert answer.decision.by_method["method"].tolist() == ["wilson", "wald"]
     assert answer.verdict.sentence == (
-        "n = 114 units. Claim that the proportion is above 90 % at 109 events or more in 114 units (exact test, one-sided): "
-        "wrongly with probability at most 2.4 %, rightly with 87.1 % if it is 97 %."
+        "n = 114 units. Claim that the proportion is above 90 % at 109 events or more in 114 units (exact test, "
+        "one-sided): wrongly with probability at most 2.4 %, rightly with 87.1 % if it is 97 %."
     )
 
 
@@ -145,8 +146,8 @@ def test_a_census_is_said() -> None:
 def test_a_width_that_leaves_the_unit_interval_is_a_caution() -> None:
     answer = size(plan(0.01, 0.04, 0.02, methods=("wilson",), precision=Precision(0.03), horizon=400))
     assert answer.cautions[0] == (
-        "Around 1 % an interval of half-width 3 points would reach beyond 0: intervals are cut there, and the width of what "
-        "is left counts."
+        "Around 1 % an interval of half-width 3 points would reach beyond 0: intervals are cut there, and the width of "
+        "what is left counts."
     )
 
 
@@ -156,9 +157,9 @@ def test_no_n_within_the_horizon_gives_the_best_found() -> None:
     assert (verdict.status, verdict.n, verdict.method, answer.inflated) == ("none", None, None, None)
     assert verdict.best["meets"] == ["expected_width", "assurance"]
     assert verdict.sentence == (
-        "No n up to 2000 meets the targets for the interval there and at every larger n. Of the stated list (plus-or-minus "
-        "(Wald)), closest is plus-or-minus (Wald) at n = 2000: worst coverage 92.2 %, expected half-width 0.8574 points, "
-        "assurance over 99.99 %."
+        "No n up to 2000 meets the targets for the interval there and at every larger n. Of the stated list "
+        "(plus-or-minus (Wald)), closest is plus-or-minus (Wald) at n = 2000: worst coverage 92.2 %, expected "
+        "half-width 0.8574 points, assurance over 99.99 %."
     )
 
 
@@ -182,7 +183,8 @@ def test_slow_methods_are_left_out_unless_named() -> None:
 
 
 def test_a_method_that_does_not_answer_the_side_is_not_scanned() -> None:
-    asked = plan(0.05, 0.2, methods=("clopper-pearson", "blaker"), prefer=("clopper-pearson",), side="upper", horizon=50)
+    names = ("clopper-pearson", "blaker")
+    asked = plan(0.05, 0.2, methods=names, prefer=names[:1], side="upper", horizon=50)
     assert list(size(asked).by_method) == ["clopper-pearson", "wald"]
 
 
@@ -243,36 +245,56 @@ def test_the_document_of_counts_and_decisions() -> None:
     assert document["methods"] == []
 
 
+SHARE = "expected a number strictly between 0 and 1"
+WHOLE = "expected a whole number of at least"
 FAULTS = [
-    ({"precision": Precision(0.02, 1.0)}, {}, "precision.assurance = 1.0: expected a number strictly between 0 and 1; no "
-     "sample short of the whole population is certain"),
-    ({"precision": Precision(0.0)}, {}, "precision.half_width = 0.0: expected a number strictly between 0 and 1"),
-    ({"precision": Precision(0.02, -0.1)}, {}, "precision.assurance = -0.1: expected a number strictly between 0 and 1"),
+    ({"precision": Precision(0.0)}, {}, f"precision.half_width = 0.0: {SHARE}"),
+    ({"precision": Precision(0.1, -0.1)}, {}, f"precision.assurance = -0.1: {SHARE}"),
+    (
+        {"precision": Precision(0.1, 1.0)},
+        {},
+        f"precision.assurance = 1.0: {SHARE}; no sample short of the whole population is certain",
+    ),
     ({"rare": Rare(0.01, (0,), 0.02)}, {}, "rare.hoped_for = 0.02: expected a rate below rare.limit = 0.01"),
     ({"rare": Rare(0.01, (0,), 0.01)}, {}, "rare.hoped_for = 0.01: expected a rate below rare.limit = 0.01"),
-    ({"rare": Rare(1.0, (0,))}, {}, "rare.limit = 1.0: expected a number strictly between 0 and 1"),
-    ({"rare": Rare(0.01, (-1,))}, {}, "rare.events = -1: expected a whole number of at least 0"),
-    ({"rare": Rare(0.01, (12,)), "sizes": (10,)}, {}, "rare.events = 12: expected fewer than sample.n = 10"),
-    ({"rare": Rare(0.01, (1,))}, {"population": 100}, "rare.events = 1: expected fewer than 1, which is 1 % of the "
-     "population of 100"),
-    ({"rare": Rare(None, (), None, 3, 0.01)}, {"population": 200}, "rare.see_at_least = 3: expected at most 2, which is "
-     "1 % of the population of 200"),
-    ({"rare": Rare(None, (), None, 0, 0.01)}, {}, "rare.see_at_least = 0: expected a whole number of at least 1"),
+    ({"rare": Rare(1.0, (0,))}, {}, f"rare.limit = 1.0: {SHARE}"),
+    ({"rare": Rare(0.01, (-1,))}, {}, f"rare.events = -1: {WHOLE} 0"),
+    ({"rare": Rare(0.01, (10,)), "sizes": (10,)}, {}, "rare.events = 10: expected fewer than sample.n = 10"),
+    (
+        {"rare": Rare(0.01, (1,))},
+        {"population": 100},
+        "rare.events = 1: expected fewer than 1, which is 1 % of the population of 100",
+    ),
+    (
+        {"rare": Rare(None, (), None, 3, 0.01)},
+        {"population": 200},
+        "rare.see_at_least = 3: expected at most 2, which is 1 % of the population of 200",
+    ),
+    ({"rare": Rare(None, (), None, 0, 0.01)}, {}, f"rare.see_at_least = 0: {WHOLE} 1"),
     ({"rare": Rare(None, (), None, 1, None)}, {}, "rare.at_rate = None: expected a number above 0 and at most 1"),
-    ({"rare": Rare(None, (), None, 1, 0.1, 1.0)}, {}, "rare.with_probability = 1.0: expected a number strictly between 0 "
-     "and 1"),
-    ({"decision": Decision(0.9, 0.9, 0.025, 0.8)}, {}, "decision.believed = 0.9: expected a proportion other than "
-     "decision.goal = 0.9"),
-    ({"decision": Decision(1.0, 0.9, 0.025, 0.8)}, {}, "decision.goal = 1.0: expected a number strictly between 0 and 1"),
-    ({"decision": Decision(0.9, 0.95, 0.5, 0.8)}, {}, "decision.alpha = 0.5: expected a number strictly between 0 and 0.5"),
-    ({"decision": Decision(0.9, 0.95, 0.1, 0.05)}, {}, "decision.power = 0.05: expected a number above decision.alpha = "
-     "0.1 and below 1"),
+    ({"rare": Rare(None, (), None, 1, 0.1, 1.0)}, {}, f"rare.with_probability = 1.0: {SHARE}"),
+    (
+        {"decision": Decision(0.9, 0.9, 0.025, 0.8)},
+        {},
+        "decision.believed = 0.9: expected a proportion other than decision.goal = 0.9",
+    ),
+    ({"decision": Decision(1.0, 0.9, 0.025, 0.8)}, {}, f"decision.goal = 1.0: {SHARE}"),
+    (
+        {"decision": Decision(0.9, 0.95, 0.5, 0.8)},
+        {},
+        "decision.alpha = 0.5: expected a number strictly between 0 and 0.5",
+    ),
+    (
+        {"decision": Decision(0.9, 0.95, 0.1, 0.05)},
+        {},
+        "decision.power = 0.05: expected a number above decision.alpha = 0.1 and below 1",
+    ),
     ({"horizon": 10**8}, {}, "sample.horizon = 100000000: expected a whole number from 1 to 10000000"),
     ({}, {"loss": 1.0}, "loss = 1.0: expected a share of at least 0 and below 1"),
-    ({}, {"population": 0}, "population = 0: expected a whole number of at least 1"),
+    ({}, {"population": 0}, f"population = 0: {WHOLE} 1"),
     ({}, {"design_effect": math.inf}, "design effect = inf: expected a number above 0"),
-    ({}, {"cluster_size": 0}, "cluster size = 0: expected a whole number of at least 1"),
-]  # fmt: skip
+    ({}, {"cluster_size": 0}, f"cluster size = 0: {WHOLE} 1"),
+]
 
 
 @pytest.mark.parametrize(("targets", "inflation", "line"), FAULTS, ids=[line[:44] for _, _, line in FAULTS])

@@ -4,7 +4,7 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.special import ndtri
 
@@ -75,6 +75,7 @@ def test_a_size_for_the_finite_population_is_not_corrected_again() -> None:
     assert ladder(45, Inflation(population=100)).units == 32
 
 
+@settings(deadline=None)
 @given(
     base=st.floats(1, 1e6),
     deff=st.floats(1, 10),

@@ -1,11 +1,13 @@
-"""Hypergeometric points and tails against mpmath and a general library, up to populations of ten million."""
+"""Hypergeometric points and tails against mpmath and exact fractions, up to populations of ten million."""
+
+from fractions import Fraction
+from math import comb
 
 import mpmath
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from scipy import stats
 
 from coverage_lab.probability_finite import finite_at_least, finite_at_most, finite_point
 
@@ -51,17 +53,24 @@ def test_points_and_tails_against_mpmath(x: int, n: int, population: int, marked
         assert abs(finite_at_least(x, n, population, marked) - above) < 1e-14 + 1e-12 * above
 
 
-@settings(deadline=None)
+def fraction(x: int, n: int, population: int, marked: int) -> Fraction:
+    if not (0 <= x <= marked and 0 <= n - x <= population - marked):
+        return Fraction(0)
+    return Fraction(comb(marked, x) * comb(population - marked, n - x), comb(population, n))
+
+
+@settings(deadline=None, max_examples=40)
 @given(st.data())
-def test_small_populations_against_a_general_library(data: st.DataObject) -> None:
-    population = data.draw(st.integers(1, 80))
+def test_small_populations_against_exact_fractions(data: st.DataObject) -> None:
+    population = data.draw(st.integers(1, 60))
     marked, n = data.draw(st.integers(0, population)), data.draw(st.integers(0, population))
-    x = np.arange(-1, population + 2)
-    law = stats.hypergeom(population, marked, n)
-    np.testing.assert_allclose(finite_point(x, n, population, marked), law.pmf(x), rtol=1e-10, atol=1e-300)
-    for k in x:
-        assert finite_at_most(int(k), n, population, marked) == pytest.approx(law.cdf(k), rel=1e-10, abs=1e-300)
-        assert finite_at_least(int(k), n, population, marked) == pytest.approx(law.sf(k - 1), rel=1e-10, abs=1e-300)
+    below = Fraction(0)
+    for x in range(-1, population + 2):
+        point = fraction(x, n, population, marked)
+        assert finite_at_least(x, n, population, marked) == pytest.approx(float(1 - below), rel=1e-12, abs=0)
+        below += point
+        assert float(finite_point(x, n, population, marked)) == pytest.approx(float(point), rel=1e-12, abs=0)
+        assert finite_at_most(x, n, population, marked) == pytest.approx(float(below), rel=1e-12, abs=0)
 
 
 def test_a_census_and_the_edges() -> None:

@@ -30,7 +30,10 @@ def test_the_smallest_n_rules_out_and_one_less_does_not(events: int, limit: floa
     assert upper[1] <= limit < upper[0]
 
 
-@pytest.mark.parametrize(("events", "limit", "population"), [(0, 0.03, 180), (2, 0.05, 400), (1, 0.3, 17), (0, 0.001, 5000)])
+FINITE = [(0, 0.03, 180), (2, 0.05, 400), (1, 0.3, 17), (0, 0.001, 5000)]
+
+
+@pytest.mark.parametrize(("events", "limit", "population"), FINITE)
 def test_finite_populations_by_brute_force(events: int, limit: float, population: int) -> None:
     most = int(np.ceil(round(limit * population, 9)))
     sizes = np.arange(population + 1)
@@ -115,6 +118,6 @@ def test_a_finite_characteristic_has_only_rates_that_exist() -> None:
 def test_no_event_in_words_is_rounded_outward_and_claims_no_zero() -> None:
     table = rare_table(Rare(0.02, (0,)), 0.95)
     assert zero_statement(table, 0.95) == (
-        "If no event is seen in 149 units, the true rate is at most 2 % with 95 % confidence (one-sided); this does not "
-        "show that the rate is zero."
+        "If no event is seen in 149 units, the true rate is at most 2 % with 95 % confidence (one-sided); this does "
+        "not show that the rate is zero."
     )

@@ -163,6 +163,24 @@ def test_a_neighbourhood_grows_until_it_holds_the_last_failure() -> None:
     assert saw(np.arange(found.safe_n, 6000)).all()
 
 
+def long_teeth(n: np.ndarray) -> np.ndarray:
+    """Holds from 4000 on, but for a gap of 60 sizes after every 500 up to 7000."""
+    return (n >= 4000) & ((n % 500 >= 60) | (n >= 7060))
+
+
+def test_teeth_far_beyond_the_brackets_place_are_combed() -> None:
+    """At p = .002 a tooth is 500 long; the last one lies 3000 beyond the first n that holds."""
+    found = look(long_teeth, 100, 10**6, Terrain(0.002, lambda _: 40.0))
+    assert found.safe_n == 7060
+    assert found.first_n < found.safe_n
+
+
+def test_a_comb_moves_on_with_what_it_finds() -> None:
+    """Each comb finds a failure near its end, and the next one starts there."""
+    found = look(lambda n: (n >= 1000) & ((n % 700 >= 30) | (n > 20_000)), 100, 10**6, Terrain(0.01, lambda _: 40.0))
+    assert found.safe_n == 19_630
+
+
 def test_nothing_found_is_said() -> None:
     found = look(lambda n: np.zeros(len(n), dtype=bool), 100, 5000, Terrain(0.5, lambda _: 10.0))
     assert (found.first_n, found.safe_n) == (None, None)

@@ -15,15 +15,15 @@ from coverage_lab.engine.exact import figures, listed
 from coverage_lab.intervals import CATALOGUE
 from coverage_lab.records import Method, Precision, tail_of
 from coverage_lab.sizing.pool import Interrupted, run
-from coverage_lab.sizing.scan import Asked, asked, scan, scanned
+from coverage_lab.sizing.scan import COVERAGE_COLUMNS, Asked, asked, scan, scanned
 from coverage_lab.sizing.search import first_and_safe
 
 SIZES = np.array([1, 2, 3, 7, 20, 41, 60, 118, 250, 251, 400])
 
 
-def question(low, high, expected=None, *, half_width=0.05, confidence=0.95, side="two-sided", prior=(1.0, 1.0)) -> Asked:
+def question(low, high, expected=None, *, confidence=0.95, side="two-sided", prior=(1.0, 1.0)) -> Asked:
     middle = expected if expected is not None else (low + high) / 2
-    return Asked(low, high, prior, middle, half_width, side, tail_of(confidence, side))
+    return Asked(low, high, prior, middle, 0.05, side, tail_of(confidence, side))
 
 
 def engine_figures(method: Method, asking: Asked, n: int) -> dict[str, float]:
@@ -53,6 +53,26 @@ def test_equals_the_engine_for_tables_with_shared_end_points(name: str) -> None:
     for n in sizes:
         wanted = engine_figures(CATALOGUE[name], asking, int(n))
         assert found.loc[n, "worst_miss"] == pytest.approx(wanted["worst_miss"], rel=1e-10)
+
+
+def test_limits_that_are_one_up_to_rounding_leave_no_false_minimum() -> None:
+    """Blaker's limits of different counts coincide; between two copies of one limit coverage would seem to be .9379."""
+    asking = question(0.02, 0.5)
+    found = scan(asking, [scanned(CATALOGUE["blaker"], coverage=True)], np.array([250]))
+    wanted = engine_figures(CATALOGUE["blaker"], asking, 250)["worst_miss"]
+    assert found["worst_miss"][0] == pytest.approx(wanted, rel=1e-10)
+    assert found["worst_miss"][0] < 0.0501
+
+
+@pytest.mark.parametrize("n", [20, 150])
+@pytest.mark.parametrize("confidence", [0.8, 0.95])
+def test_where_the_narrow_window_is_too_narrow_the_whole_one_is_taken(n: int, confidence: float) -> None:
+    """Poisson limits are far too wide near 1: counts far outside the narrow window still cover."""
+    asking = replace(question(0.9, 0.99, confidence=confidence), columns=COVERAGE_COLUMNS)
+    found = scan(asking, [scanned(CATALOGUE["poisson-exact"], coverage=True)], np.array([n]))
+    wanted = engine_figures(CATALOGUE["poisson-exact"], asking, n)
+    assert found["worst_miss"][0] == pytest.approx(wanted["worst_miss"], rel=1e-9)
+    assert found["mean_miss"][0] == pytest.approx(wanted["mean_miss"], rel=1e-8)
 
 
 @pytest.mark.parametrize("confidence", [0.8, 0.99, 0.9999])

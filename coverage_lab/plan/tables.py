@@ -1,0 +1,18 @@
+"""The tables of a plan by name, in the order of a saved plan; a dot stands for a table inside a table."""
+
+from coverage_lab.plan import schema
+from coverage_lab.plan import schema_targets as targets
+
+TABLES: dict[str, type[schema.Table]] = {
+    "study": schema.StudyTable,
+    "outcome": schema.OutcomeTable,
+    "sample": schema.SampleTable,
+    "precision": targets.PrecisionTable,
+    "rare": targets.RareTable,
+    "decision": targets.DecisionTable,
+    "standard": schema.StandardTable,
+    "design": schema.DesignTable,
+    "design.loss": targets.LossTable,
+    "simulation": schema.SimulationTable,
+    "methods": schema.MethodsTable,
+}

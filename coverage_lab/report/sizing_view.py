@@ -1,0 +1,325 @@
+"""What a sample-size page says, section by section, from the saved files alone."""
+
+from collections.abc import Iterator
+from typing import Any
+
+from coverage_lab.plan_text import plan_text
+from coverage_lab.report import sizing_tables
+from coverage_lab.report.protocol import pieces
+from coverage_lab.report.sizing_folder import OPTIONAL, SavedSizing
+from coverage_lab.report.sizing_protocol import chapters, made_up_for, rung_words
+from coverage_lab.report.sizing_words import (
+    as_audit,
+    assured,
+    at_most,
+    at_n,
+    binding,
+    capital,
+    chance,
+    chief_of,
+    claimed,
+    events,
+    goal,
+    half,
+    half_words,
+    how_checked,
+    name_of,
+    needs_words,
+    of_claiming,
+    of_ruling_out,
+    plain_claim,
+    rare_row,
+    risk,
+    rule,
+    seen_words,
+    target_heads,
+    taught,
+)
+from coverage_lab.report.view import REFERENCES as OF_COVERAGE
+from coverage_lab.report.view import SENTENCE, Fact
+from coverage_lab.report.words import (
+    NOUNS,
+    Document,
+    count,
+    joined,
+    level,
+    place,
+    planned_range,
+    range_words,
+    share,
+    standard_words,
+    weighting,
+)
+from coverage_lab.rounding import percent
+from coverage_lab.sentences import of_side
+
+SECTIONS = {
+    "verdict": "Answer",
+    "formula": "The taught formula",
+    "targets": "Precision and coverage",
+    "ladder": "From n to units",
+    "rare": "Rare outcomes",
+    "claim": "The claim",
+    "alternatives": "Alternatives",
+    "plan": "Plan",
+    "protocol": "Protocol text",
+    "cautions": "Cautions",
+    "references": "References",
+    "provenance": "Provenance",
+}
+COCHRAN = (
+    "Cochran WG (1977). Sampling Techniques, 3rd ed. Wiley. (Section 4.4: the correction for a finite population.)"
+)
+HANLEY = (
+    "Hanley JA, Lippman-Hand A (1983). If nothing goes wrong, is everything all right? Journal of the American Medical "
+    "Association 249:1743–1745. (What zero events allow to say.)"
+)
+CHERNICK = (
+    "Chernick MR, Liu CY (2002). The saw-toothed behavior of power versus sample size and software solutions. The "
+    "American Statistician 56:149–155. (Why the first n that has the power is often a lucky one.)"
+)
+CLOPPER = (
+    "Clopper CJ, Pearson ES (1934). The use of confidence or fiducial limits illustrated in the case of the binomial. "
+    "Biometrika 26:404–413. (The exact one-sided bound and the exact test.)"
+)
+
+
+def page_content(saved: SavedSizing) -> dict[str, Any]:
+    """Everything the template prints, as plain words and tables."""
+    document = saved.document
+    tables = _tables(saved)
+    absent = {name for name in ("formula", "targets", "ladder", "rare", "claim", "alternatives") if not tables[name]}
+    return {
+        "title": document["title"],
+        "about": about(document),
+        "sections": {name: title for name, title in SECTIONS.items() if name not in absent},
+        "verdict": document["verdict"],
+        "headline": headline(document),
+        "facts": list(facts(document)),
+        "notes": [
+            words for words in (closest(document), needs(document), taught(document), plain_claim(document)) if words
+        ],
+        "brief_cautions": [SENTENCE.split(caution)[0] for caution in document["cautions"]],
+        "cautions": document["cautions"],
+        "tables": tables,
+        "targets": list(target_heads(document).values()),
+        "checked": how_checked(document) if document["methods"] else [],
+        "horizon": None if document["horizon"] is None else count(document["horizon"]),
+        "zero_events": document["zero_events"],
+        "seen": seen_words(document),
+        "one_sided": of_ruling_out(document["confidence"]),
+        "claim_words": list(claim_words(document)),
+        "plain_claim": plain_claim(document),
+        "plan_rows": [(name, pieces(words)) for name, words in plan_rows(document)],
+        "plan_text": plan_text(document["plan"]),
+        "chapters": {
+            chapter.name: [(lead, pieces(text)) for lead, text in chapter.parts] for chapter in chapters(document)
+        },
+        "references": list(references(document)),
+        "provenance": document["provenance"],
+        "files": files(saved),
+        "word_file": saved.word_file,
+    }
+
+
+def _tables(saved: SavedSizing) -> dict[str, Any]:
+    """The tables by their section; None where the plan does not ask."""
+    document = saved.document
+    test = sizing_tables.exact_test(saved)
+    return {
+        "formula": sizing_tables.delivers(document),
+        "targets": sizing_tables.targets(document),
+        "ladder": sizing_tables.ladder(document),
+        "rare": sizing_tables.rare(document) or bool(document["seen"]),
+        "claim": test or document["decision"] is not None,
+        "test": test,
+        "by_method": sizing_tables.by_method(document),
+        "alternatives": sizing_tables.alternatives(document),
+    }
+
+
+def about(document: Document) -> list[str]:
+    """The line below the title."""
+    found = [document["outcome"]["name"]]
+    if document["methods"]:
+        low, high = planned_range(as_audit(document))
+        return [*found, level(document), f"planned range {range_words(low, high)}"]
+    return [*found, f"{percent(document['confidence'])} confidence"]
+
+
+def headline(document: Document) -> str:
+    """The answer in one line."""
+    verdict, needs_ = document["verdict"], document["verdict"]["needs"]
+    if verdict["status"] != "recommended":
+        return "No n meets the targets"
+    n = f"n = {count(verdict['n'])}"
+    if "interval" in needs_:
+        return f"{n} with the {name_of(document, verdict['method'])} {NOUNS[document['side']]}"
+    if "decision" in needs_ and binding(document) == "decision":
+        found = document["decision"]
+        return f"{n}: claim at {rule(found['claim'], found['critical'])}"
+    row = rare_row(document)
+    return f"{n} units" if row is None else f"{n} units, {at_most(row['events'])}"
+
+
+def closest(document: Document) -> str | None:
+    """That the figures are of the closest method when none is named."""
+    best = document["verdict"]["best"]
+    if best is None:
+        return None
+    return f"Closest, not recommended: {best['label']} at n = {count(best['n'])}. The figures above are its own."
+
+
+def needs(document: Document) -> str | None:
+    """What each target asks for, as a sentence."""
+    words = needs_words(document)
+    return f"{capital(words)}; the largest, with what the sample has to make up for, decides." if words else None
+
+
+def facts(document: Document) -> Iterator[Fact]:
+    """The figures behind the answer."""
+    verdict, ladder = document["verdict"], document["inflated"]
+    if ladder is not None and rung_words(document):
+        yield Fact(
+            "Units to take", count(verdict["units"]), f"n = {count(verdict['n'])}; {'; '.join(rung_words(document))}"
+        )
+    yield from _interval_facts(document)
+    row, target = rare_row(document), document["targets"]["rare"]
+    if row is not None and row["probability_at_hoped_for"] is not None:
+        name = f"Probability of {at_most(row['events'])} at a true rate of {place(target['hoped_for'])}"
+        yield Fact(name, chance(row["probability_at_hoped_for"]), f"in {count(row['n'])} units")
+    if row is not None:
+        name = f"Upper bound after {events(row['events'])} in {count(row['n'])} units"
+        yield Fact(name, place(row["bound"], "up"), f"{percent(document['confidence'])} confidence, one-sided")
+    seen = document["seen"]
+    if seen is not None:
+        name = f"Probability to see at least {events(seen['events'])} at {place(seen['rate'])}"
+        yield Fact(name, chance(seen["probability"]), f"in {count(seen['n'])} units")
+    if document["decision"] is not None and document["decision"]["n"] is not None:
+        yield from _claim_facts(document)
+
+
+def _interval_facts(document: Document) -> Iterator[Fact]:
+    """Coverage and width at the recommended n, or at the closest."""
+    row = at_n(document, chief_of(document))
+    if row is None:
+        return
+    entry = next(item for item in document["methods"] if item["method"] == row["method"])
+    n = count(row["n"])
+    if row["half_width"] is not None:
+        note = f"at n = {n}, worst proportion of the planned range; asked: at most {_asked(document)}"
+        yield Fact(f"Expected {half_words(document)}", half(row["half_width"]), note)
+    if row["assurance"] is not None and document["targets"]["precision"]["assurance"] is not None:
+        asked = share(document["targets"]["precision"]["assurance"])
+        note = f"at n = {n} and a true proportion of {place(document['outcome']['expected'])}; asked: at least {asked}"
+        yield Fact(capital(assured(document)), chance(row["assurance"]), note)
+    if row["minimum_coverage"] is not None:
+        covers = entry["by"]["coverage"]
+        held = f"; the standard holds from n = {count(covers['safe_n'])} on" if covers and covers["safe_n"] else ""
+        note = f"at n = {n}, approached at p = {place(row['minimum_at'])}{held}"
+        yield Fact("Worst interval coverage", share(row["minimum_coverage"], "down"), note)
+
+
+def _asked(document: Document) -> str:
+    return goal(document["targets"]["precision"]["half_width"])
+
+
+def _claim_facts(document: Document) -> Iterator[Fact]:
+    """The exact test's rule and its chances."""
+    found, target = document["decision"], document["targets"]["decision"]
+    yield Fact(f"Claim that {claimed(document)} at", rule(found["claim"], found["critical"]), f"of {count(found['n'])}")
+    size, alpha = risk(found["size"]), percent(target["alpha"])
+    yield Fact("Claimed wrongly, at most", size, f"attained size; α = {alpha}, one-sided")
+    name = f"Claimed rightly, if the proportion is {place(target['believed'])}"
+    yield Fact(name, chance(found["power"]), f"power; asked: {place(target['power'])}")
+
+
+def claim_words(document: Document) -> Iterator[str]:
+    """What the two tables of the claim show."""
+    found = document["decision"]
+    if found is None:
+        return
+    if found["n"] is None:
+        yield f"No n reaches the power for good: {found['checked']}."
+        return
+    yield f"{capital(found['checked'])}."
+    if found["first_n"] != found["safe_n"]:
+        asked = place(document["targets"]["decision"]["power"])
+        yield (
+            f"The first n with the power, {count(found['first_n'])}, is a lucky one: the critical count moves in whole "
+            f"events, so power falls back below {asked} at larger n. It holds from n = {count(found['safe_n'])} on."
+        )
+    yield of_claiming(document["targets"]["decision"]["alpha"])
+
+
+def plan_rows(document: Document) -> Iterator[tuple[str, str]]:
+    """The plan as read, in words; what it leaves open is a marked blank."""
+    study, alike = document["plan"].get("study") or {}, as_audit(document)
+    yield "Outcome", document["outcome"]["name"]
+    yield "Population", study.get("population") or "[population: to be stated]"
+    yield "Unit", study.get("unit") or "[unit: to be stated]"
+    yield "Target", study.get("target") or "[target: to be stated]"
+    if document["methods"]:
+        low, high = planned_range(alike)
+        yield "Planned range", f"{range_words(low, high)}, expected {place(document['outcome']['expected'])}"
+        yield "Basis of the range", study.get("range_basis") or "[basis: to be stated]"
+        yield "Weighting of the range", weighting(alike)
+        side = of_side(document["confidence"], document["alpha"], document["side"])
+        yield "Confidence and side", f"{level(document)}; α = {document['alpha']:g}. {side}"
+        yield "Standard", f"{document['standard']['kind']}: {standard_words(alike)}"
+        listed = joined(name_of(document, name) for name in document["verdict"]["prefer"])
+        yield "Who may be named", f"{listed}, first choice first"
+    else:
+        yield "Confidence", percent(document["confidence"])
+    yield from _target_rows(document)
+    if document["horizon"] is not None:
+        yield "Horizon", f"every larger n was looked at up to {count(document['horizon'])}"
+
+
+def _target_rows(document: Document) -> Iterator[tuple[str, str]]:
+    """The targets and what the sample has to make up for."""
+    rare, decision = document["targets"]["rare"], document["targets"]["decision"]
+    heads = [words for name, words in target_heads(document).items() if name != "coverage"]
+    if heads:
+        yield "Precision", "; ".join(heads)
+    if rare is not None and rare["limit"] is not None:
+        hoped = "" if rare["hoped_for"] is None else f", hoping for {place(rare['hoped_for'])}"
+        allowed = joined(count(c) for c in rare["events"])
+        yield "To be ruled out", f"{place(rare['limit'])}, with {allowed} events allowed{hoped}; one-sided"
+    if rare is not None and rare["see_at_least"] is not None:
+        at, sure = place(rare["at_rate"]), place(rare["with_probability"])
+        yield "To be seen", f"at least {events(rare['see_at_least'])} at a true rate of {at}, with probability {sure}"
+    if decision is not None:
+        believed, alpha = place(decision["believed"]), percent(decision["alpha"])
+        chances = f"one-sided α = {alpha}, power {place(decision['power'])}"
+        yield "Claim", f"{claimed(document)}; believed {believed}, {chances}"
+    if document["inflated"] is not None:
+        planned = [words for words in made_up_for(document).values() if words]
+        yield "To be made up for", "; ".join(planned) or "nothing"
+
+
+def references(document: Document) -> Iterator[str]:
+    """Where the rules come from, for what the plan asks."""
+    if document["rare"] or document["decision"]:
+        yield CLOPPER
+    if document["decision"]:
+        yield CHERNICK
+    if document["inflated"]:
+        yield COCHRAN
+    if document["zero_events"]:
+        yield HANLEY
+    if document["methods"]:
+        yield from (source for source in OF_COVERAGE if source.startswith(("Bradley", "Wang")))
+
+
+def files(saved: SavedSizing) -> list[str]:
+    """The files beside the page."""
+    document = saved.document
+    held = {
+        "scan.csv": not saved.scan.empty,
+        "rare.csv": bool(document["rare"]),
+        "characteristic.csv": not saved.characteristic.empty,
+        "decision.csv": not saved.decision.empty,
+        "protocol.docx": saved.word_file,
+    }
+    return ["sample-size.json", *(name for name in OPTIONAL if held[name]), "plan.toml", "protocol.md"]
