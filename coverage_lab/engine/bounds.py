@@ -61,9 +61,14 @@ def _checked(method: Method, returned: object, columns: Columns, size: int, side
         bad, what = lower > upper, "lower > upper"
     if bad.any():
         at = int(np.argmax(bad))
-        sample = ", ".join(f"{name} = {values[at % len(values)]:g}" for name, values in columns.items())
+        sample = ", ".join(f"{name} = {_shown(values[at % len(values)])}" for name, values in columns.items())
         raise InputFault(f"method {method.name!r}: {what} at {sample}: ({lower[at]:.6g}, {upper[at]:.6g})")
     return lower, upper
+
+
+def _shown(value: object) -> str:
+    """One sample's value of a column: a number, or one for every stratum."""
+    return " ".join(f"{number:g}" for number in np.ravel(value))
 
 
 def _described(returned: object) -> str:
