@@ -122,7 +122,7 @@ def _decision(sizing: Sizing) -> list[Row]:
     headings = (claim, "events", "wrongly ≤", f"rightly at {percent(goal.believed)}")
     found = [("exact test", *_claim(decided.critical, more, decided.size, decided.power))]
     rows = {row["method"]: row for row in rows_of(decided.by_method)}
-    for name in _shown(sizing.plan):
+    for name in sorted(_shown(sizing.plan), key=lambda name: name != PLAIN):  # which errs most, and must not be cut off
         if name in rows:
             row = rows[name]
             found.append((row["label"], *_claim(row["critical"], more, row["worst_size"], row["power"])))

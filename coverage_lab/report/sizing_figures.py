@@ -53,7 +53,7 @@ def panels(title: str, about: str, number: int) -> tuple[Figure, Sequence[Axes]]
 
 def heading(axes: Axes, words: str) -> None:
     """What the height stands for, above the axis."""
-    axes.set_title(words, size=8.5, loc="left", pad=5, x=-(LEFT - 0.12) / (WIDTH - LEFT - LABELS))
+    axes.set_title(words, size=8.5, loc="left", pad=5, x=-(LEFT - 0.12) / (WIDTH * axes.get_position().width))
 
 
 def found_at(document: Document, method: str, target: str) -> tuple[int | None, int | None]:
@@ -276,9 +276,9 @@ def _saw(
     found_n = (found["first_n"], found["safe_n"])
     mark_found(axes, shown, column, found_n, look)
     marks: list[Mark] = [(asked[1], float(shown["n"].iloc[-1]), asked[0], SOFT, "normal")]
-    for n, words, weight in zip(found_n, ("first n", "holds from n ="), ("normal", "bold"), strict=True):
+    for n, words, weight in zip(found_n, ("first n", "holds from\nn ="), ("normal", "bold"), strict=True):
         here = shown[shown["n"] == n]
         if not here.empty:
             value = float(here[column].iloc[0])
-            marks.append((f"{words} {count(n)}:\n{written(value)}", float(n), value, look.colour, weight))
+            marks.append((f"{words} {count(n)}: {written(value)}", float(n), value, look.colour, weight))
     label_ends(axes, marks, PANEL)

@@ -5,6 +5,7 @@ from collections.abc import Iterator
 from coverage_lab.report.chapters import Chapter
 from coverage_lab.report.protocol import one_line
 from coverage_lab.report.sizing_words import (
+    MADE_UP,
     NEEDS,
     as_audit,
     assured,
@@ -77,7 +78,7 @@ def rung_words(document: Document) -> list[str]:
     found, before = [], ladder["base"]
     for name, what in made_up_for(document).items():
         if what or ladder[name] != before:
-            found.append(f"{count(ladder[name])} {what or 'after the next step'}")
+            found.append(f"{count(ladder[name])} {what or MADE_UP[name]}")
         before = ladder[name]
     return found
 

@@ -40,6 +40,7 @@ from coverage_lab.report.view import SENTENCE, Fact
 from coverage_lab.report.words import (
     NOUNS,
     Document,
+    Row,
     count,
     joined,
     level,
@@ -96,9 +97,7 @@ def page_content(saved: SavedSizing) -> dict[str, Any]:
         "verdict": document["verdict"],
         "headline": headline(document),
         "facts": list(facts(document)),
-        "notes": [
-            words for words in (closest(document), needs(document), taught(document), plain_claim(document)) if words
-        ],
+        "notes": [sentence for sentence in (said(document) for said in NOTES) if sentence],
         "brief_cautions": [SENTENCE.split(caution)[0] for caution in document["cautions"]],
         "cautions": document["cautions"],
         "tables": tables,
@@ -176,12 +175,36 @@ def needs(document: Document) -> str | None:
     return f"{capital(words)}; the largest, with what the sample has to make up for, decides." if words else None
 
 
+def why(document: Document) -> str | None:
+    """Why this method: what the others that may be named would ask for."""
+    verdict = document["verdict"]
+    if "interval" not in verdict["needs"] or verdict["method"] is None:
+        return None
+    listed = [item for item in verdict["alternatives"] if item["method"] in verdict["prefer"]]
+    if not listed:
+        return f"The {name_of(document, verdict['method'])} is the only method that the plan lets be named."
+    others = joined(_other(document, item) for item in listed)
+    return (
+        "Of the methods that may be named the one with the smallest n is taken, an earlier one on the list winning when "
+        f"its n is at most 5 % larger. {capital(others)}."
+    )
+
+
+def _other(document: Document, item: Row) -> str:
+    """What another method that may be named asks for."""
+    name = name_of(document, item["method"])
+    return f"{name} asks for n = {count(item['safe_n'])}" if item["safe_n"] else f"{name} meets the targets at no n"
+
+
+NOTES = (closest, why, needs, taught, plain_claim)
+
+
 def facts(document: Document) -> Iterator[Fact]:
     """The figures behind the answer."""
     verdict, ladder = document["verdict"], document["inflated"]
     if ladder is not None and rung_words(document):
         yield Fact(
-            "Units to take", count(verdict["units"]), f"n = {count(verdict['n'])}; {'; '.join(rung_words(document))}"
+            "Units to recruit", count(verdict["units"]), f"n = {count(verdict['n'])}; {'; '.join(rung_words(document))}"
         )
     yield from _interval_facts(document)
     row, target = rare_row(document), document["targets"]["rare"]
@@ -216,7 +239,7 @@ def _interval_facts(document: Document) -> Iterator[Fact]:
     if row["minimum_coverage"] is not None:
         covers = entry["by"]["coverage"]
         held = f"; the standard holds from n = {count(covers['safe_n'])} on" if covers and covers["safe_n"] else ""
-        note = f"at n = {n}, approached at p = {place(row['minimum_at'])}{held}"
+        note = f"at n = {n}; exact minimum, approached at p = {place(row['minimum_at'])}{held}"
         yield Fact("Worst interval coverage", share(row["minimum_coverage"], "down"), note)
 
 

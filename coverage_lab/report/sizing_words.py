@@ -5,7 +5,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from coverage_lab.records import tail_of
-from coverage_lab.report.words import Document, Row, count, joined, place, points_places, share
+from coverage_lab.report.words import Document, Row, count, joined, place, points_places, share, standard_words
 from coverage_lab.rounding import percent, rounded
 from coverage_lab.sentences import CONDITIONAL, OF_ZERO, of_side
 
@@ -19,6 +19,7 @@ HALVES = {
     "upper": "distance of the bound from the true proportion",
     "lower": "distance of the bound from the true proportion",
 }
+TARGETS = {"expected_width": "Expected half-width", "assurance": "Assurance", "coverage": "Coverage"}
 NEEDS = {
     "interval": "the interval",
     "rare": "ruling out the rare outcome",
@@ -30,20 +31,26 @@ RUNGS = {
     "design_effect": "Design effect",
     "finite": "Finite population",
     "loss": "Losses",
-    "units": "Whole clusters",
+    "units": "Units to recruit",
+}
+MADE_UP = {
+    "design_effect": "for the design effect",
+    "finite": "in the finite population",
+    "loss": "to make up for losses",
+    "units": "in whole clusters",
 }
 
 FIXED = (
-    "Fix n, the method, the side and what will be claimed before data are seen; the number evaluated is seldom exactly "
-    "the number planned, so the n from which every larger one holds is recommended, not the first."
+    "Fix n, the method, the side and what will be claimed before data are seen. The number evaluated is seldom exactly "
+    "the number planned; therefore the n from which every larger one holds is recommended, not the first."
 )
 QUALIFIED = (
     "These sizes support, and never replace, qualified statistical review and the rules that apply where the study is "
     "done."
 )
 OF_THE_MODEL = (
-    "Every figure is conditional on the sampling model, in which each unit is an event independently of the others; "
-    "none says anything about bias: who was not reached, what was misclassified, what was lost."
+    "Every figure is conditional on the sampling model, in which each unit is an event independently of the others. "
+    "None says anything about bias: who was not reached, what was misclassified, what was lost."
 )
 OF_CORRELATION = (
     "Chances of ruling out and of claiming are those of n independent units. The design effect and the finite "
@@ -162,16 +169,17 @@ def target_heads(document: Document) -> dict[str, str]:
     for row in document["methods"]:
         found |= {name: "" for name, item in row["by"].items() if item is not None}
     precision = document["targets"]["precision"]
-    heads = {"coverage": "Coverage standard"}
+    heads = {"coverage": capital(standard_words(as_audit(document)))}
     if precision is not None:
         heads["expected_width"] = f"Expected {half_words(document)} at most {goal(precision['half_width'])}"
-        heads["assurance"] = f"{capital(assured(document))}, at least {share(precision['assurance'])}"
+        expected = place(document["outcome"]["expected"])
+        sure = f"at least {share(precision['assurance'])} at a true proportion of {expected} (assurance)"
+        heads["assurance"] = f"{capital(assured(document))}, {sure}"
     return {name: heads[name] for name in ("expected_width", "assurance", "coverage") if name in found}
 
 
 def how_checked(document: Document) -> list[str]:
     """Which n were looked at: once for all that agree, then one by one."""
-    heads = target_heads(document)
     said = [
         (row["method"], target, item["checked"])
         for row in document["methods"]
@@ -180,11 +188,11 @@ def how_checked(document: Document) -> list[str]:
     ]
     usual = Counter(checked for _, _, checked in said).most_common(1)[0][0]
     odd = [
-        f"{capital(name_of(document, method))}, {heads[target][:1].lower()}{heads[target][1:]}: {checked}."
+        f"{capital(name_of(document, method))}, {TARGETS[target].lower()}: {checked}."
         for method, target, checked in said
         if checked != usual
     ]
-    return [f"{capital(usual)}{' but where stated otherwise' if odd else ''}; none was skipped by halving.", *odd]
+    return [f"How checked: {usual}{', but where stated otherwise' if odd else ''}.", *odd]
 
 
 def taught(document: Document) -> str | None:
