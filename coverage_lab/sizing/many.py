@@ -123,8 +123,8 @@ class Prior:
     @classmethod
     def on(cls, rows: Rows, over: Range) -> "Prior":
         """On rows with every event that the range can produce."""
-        a: Array = rows.events + over.prior[0]
-        b: Array = rows.trials - rows.events + over.prior[1]
+        a = np.asarray(rows.events + over.prior[0], dtype=np.float64)
+        b = np.asarray(rows.trials - rows.events + over.prior[1], dtype=np.float64)
         weight = betabinomial(rows.events, rows.trials, *over.prior) / over.mass
         at_low, at_high = (np.asarray(betainc(a, b, end), dtype=np.float64) for end in (over.low, over.high))
         return cls(rows, over, a, b, weight, at_low, at_high, np.zeros(len(rows.n)))
