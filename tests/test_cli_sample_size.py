@@ -116,7 +116,7 @@ def test_reliability_above_ninety_per_cent() -> None:
     assert len(done.stdout.splitlines()) <= 25
     said = " ".join(done.stdout.split())
     assert said.startswith("n = 114 units. Claim that the proportion is above 90 % at 109 events or more")
-    powers = {n: power(n) for n in range(90, 300)}
+    powers = {n: power(n) for n in range(95, 200)}
     assert min(n for n in powers if powers[n] >= 0.8) == 100
     assert max(n for n in powers if powers[n] < 0.8) == 113
     assert "n = 114 (first 100)" in said
@@ -126,7 +126,7 @@ def test_reliability_above_ninety_per_cent() -> None:
 
 def power(n: int) -> float:
     """Of the exact test of 90 % against 97 %, one-sided 2.5 %."""
-    critical = next(c for c in range(n + 2) if stats.binom.sf(c - 1, n, 0.9) <= 0.025)
+    critical = int(np.argmax(stats.binom.sf(np.arange(n + 2) - 1, n, 0.9) <= 0.025))
     return float(stats.binom.sf(critical - 1, n, 0.97))
 
 
@@ -170,10 +170,10 @@ def test_all_targets_at_once_still_fit_the_first_screen() -> None:
 
 @pytest.mark.usefixtures("_no_page")
 def test_what_the_plans_own_n_gives() -> None:
-    said = " ".join(
-        run(plan_file("outcome.range = [0.005, 0.05]\nsample.horizon = 300\n"), "--n", "250").stdout.split()
-    )
-    assert "n = 250 gives Wilson score: worst interval coverage 92.7 % at p = 0.624 %" in said
+    asked = "outcome.range = [0.005, 0.05]\nprecision.half_width = 0.03\nsample.horizon = 300\n"
+    said = " ".join(run(plan_file(asked), "--n", "250").stdout.split())
+    assert "n = 250 gives Wilson score: worst interval coverage 92.7 % at p = 0.624 %, expected half-width 2.74" in said
+    assert wilson_half_width(250, 0.05) == pytest.approx(0.0274, abs=5e-6)
     said = " ".join(run("--rule-out", "0.01", "--n", "20").stdout.split())
     assert "n = 20 gives 0 events, upper bound 0.1392 (one-sided)" in said, "1 - 0.05^(1/20) = .13911, rounded up"
     said = " ".join(run(*CLAIM, "--n", "100").stdout.split())
@@ -235,7 +235,7 @@ def test_no_n_within_the_horizon_is_exit_1() -> None:
         done.stdout.split()
     )
     assert "closest is" in done.stdout
-    done = run("--goal", "0.5", "--believed", "0.51", "--horizon", "200", "--json")
+    done = run("--goal", "0.5", "--believed", "0.6", "--horizon", "100", "--json")
     assert done.exit_code == 1
     assert json.loads(done.stdout)["verdict"]["status"] == "none"
 
@@ -452,7 +452,7 @@ def test_every_example_of_the_help_is_understood(monkeypatch: pytest.MonkeyPatch
     plan_file("outcome.expected = 0.1\n")
     monkeypatch.setattr(study, "sample_size", reached)
     lines = [line.split() for line in run("--help").output.splitlines() if line.strip().startswith("coverage-lab")]
-    assert len(lines) == 5
+    assert len(lines) == 4
     for words in lines:
         assert words[1] == "sample-size"
         assert run(*words[2:]).stderr == "reached the work\n", words
@@ -479,7 +479,9 @@ def test_the_whole_job_in_a_process(tmp_path: Path) -> None:
     }
     assert set(document["cautions"]) <= set(saved["cautions"])
     assert coverage_lab.read_plan("sample-size/plan.toml").document == document["plan"]
-    assert Path("sample-size/report.html").is_file()
+    page = Path("sample-size/report.html").read_bytes()
+    assert CliRunner().invoke(cli, ["page", "sample-size"]).output == "sample-size/report.html\n"
+    assert Path("sample-size/report.html").read_bytes() == page, "from the saved files alone"
     assert [path.name for path in tmp_path.iterdir()] == ["sample-size"], "nothing else is left behind"
 
 
@@ -505,10 +507,9 @@ def test_it_is_handed_on_to_python() -> None:
 
 # --- no values end in a traceback
 
-OPTIONS = (
-    "--half-width --assurance --expected --rule-out --events --hoped-for --goal --believed --alpha --power --population "
-    "--loss --design-effect --cluster-size --horizon --confidence --side --n --workers"
-).split()
+TARGETING = "--half-width --assurance --expected --rule-out --events --hoped-for --goal --believed --alpha --power"
+OTHERS = "--population --loss --design-effect --cluster-size --horizon --confidence --side --n --workers"
+OPTIONS = [*TARGETING.split(" "), *OTHERS.split(" ")]
 NUMBERS = st.floats(0, 1).map(str) | st.integers(-2, 300).map(str) | st.floats().map(str)
 VALUES = NUMBERS | st.sampled_from(
     ["upper", "two-sided", "0.5", "1e-12", "0.999999", "x", "1e400", "10000000", "1e-300"]
@@ -550,7 +551,7 @@ MORE = st.sampled_from(
 
 
 @pytest.mark.usefixtures("_no_page")
-@settings(deadline=None, max_examples=60, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(deadline=None, max_examples=40, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(words=TARGETS, values=st.tuples(SMALL, SMALL, SMALL), more=MORE)
 def test_no_answer_ends_in_a_traceback(words: str, values: tuple[str, ...], more: str) -> None:
     """The work and the first screen, for targets that need no scan of intervals."""

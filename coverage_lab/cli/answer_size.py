@@ -26,14 +26,14 @@ def answer(sizing: Sizing, page: Path | None) -> list[str]:
     """The lines; `page` is the report when there is one."""
     width = min(WIDEST, shutil.get_terminal_size().columns - 1)
     last = [f"{'Report':<{NAMES}}  {page}"] if page is not None else []
-    lines = [*wrapped(sizing.verdict.sentence, width), "", *_spelled(_units(sizing), width), ""]
-    for table in (_methods(sizing), _rare(sizing), _decision(sizing)):
-        lines += _aligned(table)
-    lines += _spelled(_facts(sizing), width)
-    room = MOST_LINES - len(last)
-    if len(lines) > room:
+    tables = [_aligned(table) for table in (_methods(sizing), _rare(sizing), _decision(sizing))]
+    parts = [wrapped(sizing.verdict.sentence, width), _spelled(_units(sizing), width), *tables]
+    parts.append([*_spelled(_facts(sizing), width), *last])
+    lines = [line for part in parts if part for line in (*part, "")][:-1]
+    if len(lines) > MOST_LINES:  # close together, and without what comes last
         lines = [line for line in lines if line]
-    return [*lines[:room], *last]
+        lines = [*lines[: MOST_LINES - len(last)], *last]
+    return lines
 
 
 def _spelled(facts: Iterable[tuple[str, str]], width: int) -> list[str]:
@@ -45,12 +45,11 @@ def _spelled(facts: Iterable[tuple[str, str]], width: int) -> list[str]:
 
 
 def _aligned(table: Sequence[Row]) -> list[str]:
-    """Rows under their headings, with an empty line after them; nothing for a table without rows."""
+    """Rows under their headings; nothing for a table without rows."""
     if len(table) < 2:
         return []
     widths = [max(len(row[k]) for row in table) for k in range(len(table[0]))]
-    rows = ["  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip() for row in table]
-    return [*rows, ""]
+    return ["  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip() for row in table]
 
 
 def _shown(plan: Plan) -> list[str]:

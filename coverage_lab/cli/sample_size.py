@@ -8,7 +8,7 @@ import click
 
 from coverage_lab.cli import options
 from coverage_lab.cli.door import NO_RECOMMENDATION
-from coverage_lab.cli.folders import check_place
+from coverage_lab.cli.folders import check_place, first_free
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from coverage_lab.records_sizing import Sizing
 
 MODIFYING = ("confidence", "side", "horizon", "replicates", "seed")  # these change a plan; all others make one
+FROM_OPTIONS = Path("sample-size")  # the folder of a plan made of options alone
 
 EXAMPLES = """\b
 Examples:
@@ -26,8 +27,6 @@ Rule out 1 % with at most 1 failure, hoping for 0.1 %:
   coverage-lab sample-size --half-width 0.02 --assurance 0.9 --expected 0.02 --population 6200 --loss 0.05
 Show that reliability is above 90 %, believing 97 %, with power 80 %:
   coverage-lab sample-size --goal 0.9 --believed 0.97 --power 0.8
-An interval that keeps its coverage over a range, from which n on:
-  coverage-lab sample-size --range 0.005 0.05
 What a plan file asks:
   coverage-lab sample-size plan.toml
 """
@@ -87,8 +86,7 @@ def sample_size(
     """
     read, folder = _plan_of(plan, overrides)
     chosen, processes = options.together(read, lambda: options.processes(workers))
-    folder = out if out is not None else folder
-    _check_folder(folder, chosen, overwrite)
+    folder = _folder(out, folder, folder == FROM_OPTIONS, chosen, overwrite)
     done = _computed(chosen, processes, quiet)
     page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
@@ -106,9 +104,18 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
     from coverage_lab.plan import DEMONSTRATION, make_plan, read_plan
 
     if path is None and any(value not in (None, ()) for name, value in overrides.items() if name not in MODIFYING):
-        return lambda: make_plan({}, overrides=overrides), Path("sample-size")
+        return lambda: make_plan({}, overrides=overrides), FROM_OPTIONS
     file = path if path is not None else DEMONSTRATION
     return lambda: read_plan(file, overrides=overrides), Path(f"{file.stem}-sample-size")
+
+
+def _folder(out: Path | None, usual: Path, from_options: bool, plan: "Plan", overwrite: bool) -> Path:
+    """Where the report goes: as asked, else the usual place; a question without a file takes the first free one."""
+    if out is None and from_options and not overwrite:
+        return first_free(usual, lambda folder: _check_folder(folder, plan, overwrite))
+    folder = usual if out is None else out
+    _check_folder(folder, plan, overwrite)
+    return folder
 
 
 def _check_folder(folder: Path, plan: "Plan", overwrite: bool) -> None:

@@ -185,8 +185,8 @@ def why(document: Document) -> str | None:
         return f"The {name_of(document, verdict['method'])} is the only method that the plan lets be named."
     others = joined(_other(document, item) for item in listed)
     return (
-        "Of the methods that may be named the one with the smallest n is taken, an earlier one on the list winning when "
-        f"its n is at most 5 % larger. {capital(others)}."
+        "Of the methods that may be named the one with the smallest n is taken; an earlier one on the list wins when its "
+        f"n is at most 5 % larger. {capital(others)}."
     )
 
 
