@@ -1,11 +1,15 @@
 """The audit's verdict and the plan's [precision]: the smallest n that is narrow enough, and a word when none is."""
 
+from pathlib import Path
+
 import numpy as np
 import pytest
+from click.testing import CliRunner
 from scipy import stats
 
 import coverage_lab as cl
-from coverage_lab import verdict
+from coverage_lab import study, verdict
+from coverage_lab.cli import cli
 from coverage_lab.records import Audit, Verdict
 
 FEW = {"only": ["wilson", "clopper-pearson"]}
@@ -81,6 +85,22 @@ def test_a_bound_is_measured_by_its_distance() -> None:
 
 def test_without_a_target_nothing_is_measured() -> None:
     assert audited([250], None).verdict.precision is None
+
+
+def test_the_first_screen_says_which_n_are_too_wide(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(study, "write_report", lambda audit, folder, **rest: Path(folder) / "report.html")
+    text = "outcome.range = [0.005, 0.05]\nsample.candidates = [250, 480]\nprecision.half_width = 0.02\n"
+    path = tmp_path / "plan.toml"
+    path.write_text(f"{text}simulation.replicates = 200\nmethods.only = ['wilson']\n", encoding="utf-8")
+    done = CliRunner().invoke(cli, ["audit", str(path), "--out", str(tmp_path / "new")])
+    said = " ".join(done.stdout.split())
+    assert said.startswith("At n = 480, report the Wilson score interval")
+    assert "By n 250: wilson (too wide), 480: wilson" in said
+    assert "Precision expected half-width 1.97 points at worst, 2 points asked: met" in said
+    again = CliRunner().invoke(cli, ["audit", str(path), "--n", "250", "--out", str(tmp_path / "new")])
+    assert "Precision expected half-width 2.75 points at worst, 2 points asked: not met" in " ".join(
+        again.stdout.split()
+    )
 
 
 def decided(n: int, status: str, meets: bool | None) -> Verdict:

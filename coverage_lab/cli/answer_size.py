@@ -8,9 +8,10 @@ from typing import Any
 import pandas as pd
 
 from coverage_lab.cli.answer import MOST_LINES, PLAIN, WIDEST, wrapped
+from coverage_lab.precision import points_up
 from coverage_lab.records import Plan
 from coverage_lab.records_sizing import Sizing, rows_of
-from coverage_lab.report.words import NOTHING, count, place, points, share
+from coverage_lab.report.words import NOTHING, count, place, share
 from coverage_lab.rounding import percent, proportion
 from coverage_lab.sizing.rare import bound as bound_at
 
@@ -83,9 +84,14 @@ def _methods(sizing: Sizing) -> list[Row]:
     return [headings, *found]
 
 
+def _word(plan: Plan) -> str:
+    """What a target for the width is about."""
+    return "half-width" if plan.side == "two-sided" else "distance"
+
+
 def _headings(sizing: Sizing) -> dict[str, str]:
     """The targets for which some method was scanned, with their headings."""
-    word = "half-width" if sizing.plan.side == "two-sided" else "distance"
+    word = _word(sizing.plan)
     words = {"expected_width": word, "assurance": f"P({word} ≤ d)", "coverage": "coverage"}
     return {name: said for name, said in words.items() if any(by.get(name) for by in sizing.by_method.values())}
 
@@ -174,10 +180,10 @@ def _planned(sizing: Sizing) -> Iterator[tuple[str, str]]:
 
 def _scanned(sizing: Sizing, n: int) -> Iterator[str]:
     """Coverage and widths at n of the recommended method, or of the first that may be."""
-    name = sizing.verdict.method or sizing.plan.prefer[0].name
+    name, word = sizing.verdict.method or sizing.plan.prefer[0].name, _word(sizing.plan)
     for row in rows_of(sizing.scan[(sizing.scan["method"] == name) & (sizing.scan["n"] == n)]):
         worst = f"worst interval coverage {share(row['minimum_coverage'], 'down')} at p = {place(row['minimum_at'])}"
-        width = f", expected half-width {points(row['half_width'])} at worst" if row["half_width"] is not None else ""
+        width = f", expected {word} {points_up(row['half_width'])} at worst" if row["half_width"] is not None else ""
         yield f"{_label(sizing.plan, name)}: {worst}{width}"
 
 

@@ -8,7 +8,7 @@ import click
 
 from coverage_lab.cli import options
 from coverage_lab.cli.door import KEPT, NO_RECOMMENDATION
-from coverage_lab.cli.folders import check_place, existing, first_free
+from coverage_lab.cli.folders import check_place, chosen_folder, existing
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -58,7 +58,8 @@ def audit(
     """
     read, name = _plan_of(plan, overrides)
     chosen, processes = options.together(read, lambda: options.processes(workers))
-    folder = _folder(out, Path(f"{name}-report"), name == FROM_OPTIONS, chosen, overwrite)
+    unnamed = name == FROM_OPTIONS and not overwrite
+    folder = chosen_folder(out, Path(f"{name}-report"), unnamed, lambda at: _check_folder(at, chosen, overwrite))
     done = _computed(chosen, processes, folder, quiet)
     page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
@@ -77,15 +78,6 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
     if any(overrides[name] not in (None, ()) for name in DEFINING):
         return lambda: make_plan({}, overrides=overrides, audited=True), FROM_OPTIONS
     return lambda: read_plan(DEMONSTRATION, overrides=overrides, audited=True), DEMONSTRATION.stem
-
-
-def _folder(out: Path | None, usual: Path, from_options: bool, plan: "Plan", overwrite: bool) -> Path:
-    """Where the report goes: as asked, else the usual place; a question without a file takes the first free one."""
-    if out is None and from_options and not overwrite:
-        return first_free(usual, lambda folder: _check_folder(folder, plan, overwrite))
-    folder = usual if out is None else out
-    _check_folder(folder, plan, overwrite)
-    return folder
 
 
 def _check_folder(folder: Path, plan: "Plan", overwrite: bool) -> None:

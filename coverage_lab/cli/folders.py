@@ -22,6 +22,19 @@ def check_place(folder: Path) -> None:
         raise InputFault(f"{folder}: expected a folder for the report, but {above} is not writable")
 
 
+def chosen_folder(out: Path | None, usual: Path, unnamed: bool, check: Callable[[Path], None]) -> Path:
+    """Where the report goes: as asked, else the usual place; a question without a file takes the first free one.
+
+    Raises:
+        InputFault: what `check` says against it.
+    """
+    if out is None and unnamed:
+        return first_free(usual, check)
+    folder = usual if out is None else out
+    check(folder)
+    return folder
+
+
 def first_free(folder: Path, check: Callable[[Path], None]) -> Path:
     """The folder, or the first of folder-2, folder-3 … that `check` does not refuse.
 

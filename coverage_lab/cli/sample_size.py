@@ -8,7 +8,7 @@ import click
 
 from coverage_lab.cli import options
 from coverage_lab.cli.door import NO_RECOMMENDATION
-from coverage_lab.cli.folders import check_place, first_free
+from coverage_lab.cli.folders import check_place, chosen_folder
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -84,9 +84,10 @@ def sample_size(
     Options replace what the plan says. Without PLAN they make a plan of their own; without them, too, the built-in
     demonstration is sized. The folder is named PLAN-sample-size.
     """
-    read, folder = _plan_of(plan, overrides)
+    read, usual = _plan_of(plan, overrides)
     chosen, processes = options.together(read, lambda: options.processes(workers))
-    folder = _folder(out, folder, folder == FROM_OPTIONS, chosen, overwrite)
+    unnamed = usual == FROM_OPTIONS and not overwrite
+    folder = chosen_folder(out, usual, unnamed, lambda at: _check_folder(at, chosen, overwrite))
     done = _computed(chosen, processes, quiet)
     page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
@@ -107,15 +108,6 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
         return lambda: make_plan({}, overrides=overrides), FROM_OPTIONS
     file = path if path is not None else DEMONSTRATION
     return lambda: read_plan(file, overrides=overrides), Path(f"{file.stem}-sample-size")
-
-
-def _folder(out: Path | None, usual: Path, from_options: bool, plan: "Plan", overwrite: bool) -> Path:
-    """Where the report goes: as asked, else the usual place; a question without a file takes the first free one."""
-    if out is None and from_options and not overwrite:
-        return first_free(usual, lambda folder: _check_folder(folder, plan, overwrite))
-    folder = usual if out is None else out
-    _check_folder(folder, plan, overwrite)
-    return folder
 
 
 def _check_folder(folder: Path, plan: "Plan", overwrite: bool) -> None:

@@ -9,7 +9,6 @@ from coverage_lab.report.sizing_protocol import made_up_for
 from coverage_lab.report.sizing_words import (
     MADE_UP,
     RUNGS,
-    TARGETS,
     as_audit,
     assured,
     at_n,
@@ -24,6 +23,7 @@ from coverage_lab.report.sizing_words import (
     rare_row,
     risk,
     rule,
+    short_target,
     target_heads,
 )
 from coverage_lab.report.tables import Cell, Column, Table
@@ -76,11 +76,11 @@ def targets(document: Document) -> Table | None:
     if not set_:
         return None
     shown = [name for name in set_ if len(set_) > 1]  # a single target is what "all" are
-    titles = [f"{TARGETS[name]}: {which}" for name in shown for which in ("first n", "holds from n on")]
+    titles = [f"{short_target(document, name)}: {which}" for name in shown for which in ("first n", "holds from n on")]
     last = ["All targets: first n", "All targets: holds from n on"] if shown else ["First n", "Holds from n on"]
     columns = (Column("Method", numeric=False), *map(Column, (*titles, *last)))
     rows = tuple(_found(document, row, shown) for row in document["methods"])
-    caption = f"n by method; checked up to n = {count(document['horizon'])}"
+    caption = "The first n that meets the targets, and the n from which they hold, by method"
     return Table("targets", caption, columns, rows)
 
 

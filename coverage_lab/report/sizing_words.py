@@ -1,7 +1,7 @@
 """The phrases of a sample-size report, from a saved document (sample-size.json) alone."""
 
 from collections import Counter
-from collections.abc import Mapping
+from collections.abc import Iterator
 from typing import Any
 
 from coverage_lab.records import tail_of
@@ -19,7 +19,6 @@ HALVES = {
     "upper": "distance of the bound from the true proportion",
     "lower": "distance of the bound from the true proportion",
 }
-TARGETS = {"expected_width": "Expected half-width", "assurance": "Assurance", "coverage": "Coverage"}
 NEEDS = {
     "interval": "the interval",
     "rare": "ruling out the rare outcome",
@@ -53,8 +52,13 @@ OF_THE_MODEL = (
     "None says anything about bias: who was not reached, what was misclassified, what was lost."
 )
 OF_CORRELATION = (
-    "Chances of ruling out and of claiming are those of n independent units. The design effect and the finite "
-    "population only change how many units are taken: analyse such a sample by a method made for it."
+    "Chances of ruling out and of claiming are those of n independent units. The design effect and whole clusters only "
+    "change how many units are taken: analyse such a sample by a method made for it."
+)
+
+
+OF_FINITE_CLAIMS = (
+    "The claim's chances are those of an unlimited population; the finite one enters by the usual correction of n."
 )
 
 
@@ -104,6 +108,12 @@ def risk(value: float) -> str:
 def half_words(document: Document) -> str:
     """What the plan's half-width limits: of a two-sided interval, or of a bound."""
     return HALVES[document["side"]]
+
+
+def short_target(document: Document, target: str) -> str:
+    """A target of the interval as a table's heading."""
+    width = "half-width" if document["side"] == "two-sided" else "distance"
+    return {"expected_width": f"Expected {width}", "assurance": "Assurance", "coverage": "Coverage"}[target]
 
 
 def width_limit(document: Document) -> float:
@@ -158,6 +168,12 @@ def rule(claim: str, critical: int | None, n: int | None = None) -> str:
     return f"{count(critical)} events or {'more' if claim == 'above' else 'fewer'}{of}"
 
 
+def claim_at_n(document: Document) -> Row:
+    """The exact test at the recommended n, else at its own: n, critical, size, power."""
+    found = document["claim_at_n"] or document["decision"]
+    return {name: found[name] for name in ("n", "critical", "size", "power")}
+
+
 def claimed(document: Document) -> str:
     """'the proportion is above 90 %'."""
     return f"the proportion is {document['decision']['claim']} {place(document['targets']['decision']['goal'])}"
@@ -188,11 +204,16 @@ def how_checked(document: Document) -> list[str]:
     ]
     usual = Counter(checked for _, _, checked in said).most_common(1)[0][0]
     odd = [
-        f"{capital(name_of(document, method))}, {TARGETS[target].lower()}: {checked}."
+        f"{capital(name_of(document, method))}, {short_target(document, target).lower()}: {looked_at(checked)}."
         for method, target, checked in said
         if checked != usual
     ]
-    return [f"How checked: {usual}{', but where stated otherwise' if odd else ''}.", *odd]
+    return [f"Looked at: {looked_at(usual)}{', unless stated otherwise' if odd else ''}.", *odd]
+
+
+def looked_at(checked: str) -> str:
+    """Which n were looked at: 'every n from 1 to 2000'."""
+    return checked.replace(" checked", "")
 
 
 def taught(document: Document) -> str | None:
@@ -263,14 +284,20 @@ def standing_cautions(document: Document) -> list[str]:
         said.append(OF_ZERO)
     if decision is not None:
         said.append(of_claiming(decision["alpha"]))
-    if document["inflated"] and _stretched(document["inflated"]) and (document["rare"] or decision):
-        said.append(OF_CORRELATION)
+    said += _of_the_ladder(document)
     return [*said, CONDITIONAL if document["methods"] else OF_THE_MODEL, FIXED, QUALIFIED]
 
 
-def _stretched(ladder: Mapping[str, Any]) -> bool:
-    """Whether design effect, population or clusters change n."""
-    return len({ladder["base"], ladder["design_effect"], ladder["finite"]}) > 1 or ladder["whole_clusters"] is not None
+def _of_the_ladder(document: Document) -> Iterator[str]:
+    """What the steps from n to units leave as it was."""
+    ladder, claim = document["inflated"], document["decision"]
+    if ladder is None:
+        return
+    clustered = ladder["design_effect"] != ladder["base"] or ladder["whole_clusters"] is not None
+    if clustered and (claim or document["rare"]):
+        yield OF_CORRELATION
+    if claim and ladder["finite"] != ladder["design_effect"]:
+        yield OF_FINITE_CLAIMS
 
 
 def of_ruling_out(confidence: float) -> str:
