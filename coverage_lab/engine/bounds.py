@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Sequence
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from coverage_lab.checks import InputFault
 from coverage_lab.records import Array, Columns, Limits, Method, Side
@@ -66,7 +67,7 @@ def _checked(method: Method, returned: object, columns: Columns, size: int, side
     return lower, upper
 
 
-def _shown(value: object) -> str:
+def _shown(value: ArrayLike) -> str:
     """One sample's value of a column: a number, or one for every stratum."""
     return " ".join(f"{number:g}" for number in np.ravel(value))
 
