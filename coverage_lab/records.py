@@ -87,7 +87,7 @@ class Part:
     constants: Columns = field(default_factory=dict)
 
     def chance(self, p: Array) -> Array:
-        """The chance that a counted unit is recorded as an event: linear in the truth p, rising."""
+        """The chance that a counted unit is recorded as an event: a straight line in the truth p."""
         return self.at_zero * (1 - p) + self.at_one * p
 
     def columns(self, events: Counts) -> Columns:

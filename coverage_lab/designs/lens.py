@@ -10,6 +10,8 @@ from coverage_lab.records import Array, Counts
 
 Row = tuple[float, float, float]
 
+_ROUNDING = 1e-14  # of products of chances
+
 
 @dataclass(frozen=True)
 class Lens:
@@ -36,7 +38,7 @@ class Lens:
     @property
     def kept(self) -> float | None:
         """The chance that a unit is kept where it does not depend on what the unit is, else None."""
-        return 1 - self.event[2] if self.event[2] == self.other[2] else None
+        return 1 - self.event[2] if abs(self.event[2] - self.other[2]) <= _ROUNDING else None
 
     def kept_at(self, p: float) -> float:
         """The chance that a unit is kept when a share p of units are events."""

@@ -16,7 +16,7 @@ from coverage_lab.records import Array, Columns, Counts, Outcomes
 
 SMALLEST_STRATUM = 2
 _WEIGHTS_SUM_WITHIN = 1e-9
-_LARGEST_PRODUCT = 4_000_000  # samples formed before the rare ones are dropped
+_LARGEST_PRODUCT = 1_000_000  # samples formed before the rare ones are dropped
 _TOTALS = frozenset({"events", "trials"})
 
 

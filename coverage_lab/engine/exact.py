@@ -40,8 +40,8 @@ def possible(part: Part, low: float, high: float, floor: float = 1e-18) -> Count
     """Every events count whose probability exceeds the floor somewhere in [low, high]."""
     if part.population is not None:
         return np.arange(likely(part.trials, low, floor)[0], likely(part.trials, high, floor)[1] + 1)
-    ends = part.chance(np.array([low, high]))
-    first, last = window(part.trials, float(ends[0]), float(ends[1]), floor)
+    ends = np.sort(part.chance(np.array([low, high]))).tolist()
+    first, last = window(part.trials, *ends, floor)
     return np.arange(first, last + 1)
 
 
@@ -84,7 +84,7 @@ def _means(part: Listed, over: Range, side: Side) -> dict[str, Array]:
         points = thinned(reachable(of.population, over.low, over.high), MEAN_POINTS)
     elif (of.at_zero, of.at_one) == (0.0, 1.0):
         return range_means(part.events, of.trials, part.limits, over, side)
-    elif over.prior == (1.0, 1.0):
+    elif over.prior == (1.0, 1.0) and of.at_one > of.at_zero:
         return _stretched_means(part, over, side)
     else:
         points = np.linspace(over.low, over.high, MEAN_POINTS)

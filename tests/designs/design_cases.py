@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from coverage_lab.designs import Classification, Clustered, Finite, Layered, Loss, Simple, Stratified, Stratum
 from coverage_lab.designs.frame import Frame
 
-STRATA = (Stratum("north", 0.5, 40), Stratum("middle", 0.3, 30, 2.0), Stratum("south", 0.2, 30, 4.0))
+STRATA = (Stratum("north", 0.5, 20), Stratum("middle", 0.3, 15, 2.0), Stratum("south", 0.2, 15, 4.0))
 
 FRAMES: dict[str, tuple[Frame, int]] = {
     "simple": (Simple(), 60),
@@ -16,7 +16,7 @@ FRAMES: dict[str, tuple[Frame, int]] = {
     "listed": (Clustered((3, 3, 5, 8, 8, 13), 0.1), 40),
     "random": (Clustered(6, 0.1, cv=0.5), 60),
     "independent": (Clustered(6, 0.0), 60),
-    "strata": (Stratified(STRATA), 100),
+    "strata": (Stratified(STRATA), 50),
 }
 
 LAYERS = {

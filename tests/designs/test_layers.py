@@ -158,3 +158,26 @@ def test_loss_in_clusters_is_drawn_unit_by_unit() -> None:
     trials = design.draw(0.3, 100, 4000, np.random.default_rng(3))["trials"]
     assert trials.mean() == pytest.approx(90, abs=0.3)
     assert trials.var() == pytest.approx(9, rel=0.15)
+
+
+@pytest.mark.parametrize("others", [0.5, 0.75, 0.9])
+def test_losses_counted_as_events_can_turn_the_record_around(others: float) -> None:
+    """So many non-events are lost that the recorded share stands still, or falls, as the truth rises."""
+    design = Layered(Simple(), (Loss(0.0, others, "events"), Classification(0.8, 0.8)))
+    chances = design.lens.other[0], design.lens.event[0]
+    assert (chances[1] > chances[0]) == (others < 0.75 - 1e-9)
+    over = Range(0.1, 0.3, (1.0, 1.0))
+    parts = listed(design, [CATALOGUE["wilson"]], 30, (over.low, over.high), "two-sided", TAIL)
+    found = minimum_of(parts, 0, over.low, over.high)
+    seen = [minimum_of(parts, 0, float(p), float(p)).coverage for p in np.linspace(0.1, 0.3, 401)]
+    assert found.coverage == pytest.approx(min(seen), abs=5e-3)
+    assert found.coverage <= min(seen) + 1e-12
+    means = means_of(parts, over, "two-sided")
+    assert 1 - means["missed_below"][0] - means["missed_above"][0] == pytest.approx(np.mean(seen), abs=5e-3)
+
+
+def test_losses_that_are_alike_stay_alike_in_any_order() -> None:
+    for test in (Classification(0.93, 0.87), Classification(0.7, 0.9), Classification(1.0, 0.65)):
+        for rate in (0.1, 0.07, 0.35):
+            lens = Layered(Simple(), (test, Loss(rate, rate))).lens
+            assert lens.kept == pytest.approx(1 - rate)
