@@ -92,3 +92,51 @@ def test_a_design_that_cannot_be_is_exit_2(tmp_path: Path) -> None:
     assert done.exit_code == 2
     assert done.stderr == f"{file}:4: [sample] n = 250: expected at most the population of 100\n"
     assert not list(tmp_path.glob("*report*"))
+
+
+def test_data_of_clusters_gives_the_methods_own_limits(tmp_path: Path) -> None:
+    file = tmp_path / "data.csv"
+    file.write_text("cluster,events,trials\na,3,20\nb,0,25\na,1,5\nc,2,24\n")
+    given = json.loads(run("interval", "--data", str(file), "--json").stdout)
+    limits = {row["method"]: (row["lower"], row["upper"]) for row in given["intervals"]}
+    assert (given["events"], given["trials"]) == (6, 74)
+    lower, upper = cl.intervals.korn_graubard(6, 74, 3, 16 + 4, 100 + 48, 625 + 625 + 576, 0.025)
+    assert limits["korn-graubard"] == (float(lower), float(upper))
+    assert "wilson" in limits
+    assert "stratified-wilson" not in limits
+
+
+def test_data_of_strata_gives_the_methods_own_limits(tmp_path: Path) -> None:
+    file = tmp_path / "data.csv"
+    file.write_text("stratum,weight,events,trials\na,0.4,3,100\nb,0.6,5,150\n")
+    given = json.loads(run("interval", "--data", str(file), "--method", "stratified-wilson", "--json").stdout)
+    lower, upper = cl.intervals.stratified_wilson([3, 5], [100, 150], [0.4, 0.6], 0.025)
+    assert (given["intervals"][0]["lower"], given["intervals"][0]["upper"]) == (float(lower), float(upper))
+
+
+def test_a_population_and_a_test_add_their_methods() -> None:
+    options = ["--population", "6200", "--sensitivity", "48/50", "--specificity", "99/100"]
+    given = json.loads(run("interval", "7", "250", *options, "--json").stdout)
+    names = {row["method"] for row in given["intervals"]}
+    assert {"wilson", "wilson-fpc", "hypergeometric-exact", "corrected-wilson", "corrected-adjusted"} <= names
+    plain = json.loads(run("interval", "7", "250", "--json").stdout)
+    assert not {row["method"] for row in plain["intervals"]} & {"wilson-fpc", "corrected-wilson"}
+
+
+@pytest.mark.parametrize(
+    ("options", "line"),
+    [
+        (["--population", "100"], "--population 100: expected at least the 250 trials"),
+        (["--sensitivity", "0.9"], "expected --sensitivity and --specificity together"),
+        (["--sensitivity", "0.5", "--specificity", "0.5"], "--sensitivity + --specificity = 1: expected more than 1"),
+        (
+            ["--sensitivity", "0/0", "--specificity", "0.9"],
+            "--sensitivity 0/0: expected a number from 0 to 1, or COUNT",
+        ),
+        (["--sensitivity", "9/10", "--specificity", "0.9"], "expected --sensitivity and --specificity both as numbers"),
+    ],
+)
+def test_unusable_options_are_exit_2(options: list[str], line: str) -> None:
+    done = run("interval", "7", "250", *options)
+    assert done.exit_code == 2
+    assert done.stderr.startswith(line)
