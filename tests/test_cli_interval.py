@@ -11,6 +11,9 @@ from coverage_lab.intervals import CATALOGUE, EVERY
 
 
 @pytest.fixture(autouse=True)
+KNOWN = "events, trials, cluster, stratum, weight"
+
+
 def _elsewhere(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
 
@@ -177,7 +180,7 @@ def test_rows_are_added_up(text: str) -> None:
     ("text", "lines"),
     [
         ("", ["data.csv:1: headings = '': expected the columns events and trials, each once"]),
-        ("7,250\n", [f"data.csv:1: unknown column '{name}': must be one of events, trials, cluster, stratum, weight" for name in (7, 250)]),
+        ("7,250\n", [f"data.csv:1: unknown column '{name}': must be one of {KNOWN}" for name in (7, 250)]),
         ("event,trials\n7,9\n", ["""data.csv:1: unknown column 'event': did you mean "events"?"""]),
         (
             "events,trials,cluster\n7,9,a\n",
