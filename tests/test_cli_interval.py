@@ -9,11 +9,10 @@ from click.testing import CliRunner, Result
 from coverage_lab.cli import cli
 from coverage_lab.intervals import CATALOGUE, EVERY
 
-
-@pytest.fixture(autouse=True)
 KNOWN = "events, trials, cluster, stratum, weight"
 
 
+@pytest.fixture(autouse=True)
 def _elsewhere(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
 
