@@ -59,7 +59,7 @@ def measured(plan: Plan, precision: Precision, method: str, n: int) -> Mapping[s
 def _missed(plan: Plan, precision: Precision, found: Mapping[str, Any]) -> str:
     """What is missed of the plan's precision, and by how much."""
     what = "half-width" if plan.side == "two-sided" else "distance from the true proportion"
-    expected = _rounded_up(found["expected_half_width"])
+    expected = points_up(found["expected_half_width"])
     said = f"This is less precise than the plan asks: its expected {what} at the worst proportion of the range is "
     said += f"{expected}, against {points(precision.half_width)}"
     if precision.assurance is not None:
@@ -69,7 +69,7 @@ def _missed(plan: Plan, precision: Precision, found: Mapping[str, Any]) -> str:
     return said + "."
 
 
-def _rounded_up(width: float) -> str:
+def points_up(width: float) -> str:
     """A half-width in percentage points, three significant digits, never flattered: 0.020001 -> '2.01 points'."""
     places = max(0, 2 - math.floor(math.log10(100 * width))) if width > 0 else 0
     return f"{rounded(100 * width, places, 'up')} points"

@@ -58,7 +58,8 @@ def never(*arguments: object, **keywords: object) -> None:
 
 
 @pytest.mark.parametrize(
-    "arguments", [["--help"], *([name, "-h"] for name in ("audit", "interval", "methods", "page", "plan"))]
+    "arguments",
+    [["--help"], *([name, "-h"] for name in ("audit", "sample-size", "interval", "methods", "page", "plan"))],
 )
 def test_help_loads_nothing_heavy(arguments: list[str]) -> None:
     code = (
@@ -72,7 +73,7 @@ def test_help_loads_nothing_heavy(arguments: list[str]) -> None:
     assert "coverage-lab" in done.stdout
 
 
-@pytest.mark.parametrize("name", ["audit", "interval", "methods", "page", "plan"])
+@pytest.mark.parametrize("name", ["audit", "sample-size", "interval", "methods", "page", "plan"])
 def test_every_command_shows_examples(name: str) -> None:
     shown = run(name, "--help").output
     assert "Examples:" in shown
@@ -279,8 +280,11 @@ def test_all_faults_of_the_command_line_at_once(monkeypatch: pytest.MonkeyPatch)
 @pytest.mark.parametrize(
     ("arguments", "line"),
     [
-        (["--n", "60"], "[outcome]: expected the key range or expected, came nothing; or give --range or --expected"),
-        (["--expected", "0.1"], "[sample]: expected the key n or candidates, came nothing; or give --n"),
+        (
+            ["--n", "60"],
+            "[outcome]: expected the key range or expected, which an audit needs; or give --range or --expected",
+        ),
+        (["--expected", "0.1"], "[sample]: expected the key n or candidates, which an audit needs; or give --n"),
         (["--expected", "0", "--n", "9"], "--expected 0: expected a number strictly between 0 and 1"),
         (["none.toml"], "none.toml: expected a plan file, but there is no such file"),
         (["."], ".: expected a plan file, but this is a folder"),

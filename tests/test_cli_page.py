@@ -51,7 +51,8 @@ def test_what_is_no_report_is_one_line(name: str, tmp_path: Path) -> None:
     (tmp_path / "file").write_text("")
     done = run(tmp_path / name)
     assert done.exit_code == 2
-    assert done.stderr == f"{tmp_path / name}: expected the report folder of an audit, but it holds no audit.json\n"
+    neither = "expected a report folder, but it holds neither audit.json nor sample-size.json"
+    assert done.stderr == f"{tmp_path / name}: {neither}\n"
 
 
 @pytest.mark.parametrize(

@@ -31,11 +31,15 @@ def commands() -> list[list[str]]:
 
 
 def test_every_command_runs_in_the_order_printed(tmp_path: Path) -> None:
-    assert len(commands()) == 6
+    assert len(commands()) == 9
+    sizes = []
     for words in commands():
         done = run(words, tmp_path)
         assert done.returncode == 0, (words, done.stderr)
         assert "Traceback" not in done.stderr
+        sizes += re.findall(r"^n = (\d+) units", done.stdout) if "sample-size" in words else []
+    assert sizes == ["473", "380", "114"]
+    assert all(f" {n}" in README for n in sizes)
     assert (tmp_path / "demonstration" / "report.html").exists()
 
 
@@ -55,7 +59,6 @@ def test_the_python_example_prints_what_it_says(tmp_path: Path) -> None:
 
 
 def test_the_table_is_the_committed_report() -> None:
-
 
     rows = {
         row["label"]: row

@@ -32,9 +32,10 @@ def cli() -> None:
 
     You plan to examine n units and to report a proportion with an interval. Which interval really covers the truth as
     often as it says, at your n, in the range where your proportion should lie? This program works that out by exact
-    probabilities and by simulation, names a method, and writes the report.
+    probabilities and by simulation, names a method, and writes the report. And how many units does it take?
 
-    Exit codes: 0 done; 1 done, but no method is recommended; 2 unusable input, a line for each fault; 130 interrupted.
+    Exit codes: 0 done; 1 done, but no method is recommended, or no n is found; 2 unusable input, a line for each fault;
+    130 interrupted.
     """
 
 

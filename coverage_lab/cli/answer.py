@@ -6,8 +6,10 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
+from coverage_lab.precision import points_up
 from coverage_lab.report.words import SHORT_WIDTHS, count, how_sure, label_of, least, place, points, row_of, share
 from coverage_lab.rounding import Towards, proportion
+from coverage_lab.sizing.words import points as points_asked
 
 Document = dict[str, Any]
 
@@ -78,7 +80,10 @@ def _precision(document: Document) -> Iterator[tuple[str, str]]:
     found = document["verdict"]["precision"]
     if found is None:
         return
-    got = f"expected half-width {points(found['expected_half_width'])} at worst, {points(found['half_width'])} asked"
+    what = "half-width" if document["side"] == "two-sided" else "distance from the true proportion"
+    got = (
+        f"expected {what} {points_up(found['expected_half_width'])} at worst, {points_asked(found['half_width'])} asked"
+    )
     if found["assurance"] is not None:
         got += f"; kept to with probability {share(found['probability'], 'down')}, {share(found['assurance'])} asked"
     yield "Precision", f"{got}: {'met' if found['meets'] else 'not met'}"

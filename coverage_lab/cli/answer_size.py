@@ -8,9 +8,10 @@ from typing import Any
 import pandas as pd
 
 from coverage_lab.cli.answer import MOST_LINES, PLAIN, WIDEST, wrapped
+from coverage_lab.precision import points_up
 from coverage_lab.records import Plan
 from coverage_lab.records_sizing import Sizing, rows_of
-from coverage_lab.report.words import NOTHING, count, place, points, share
+from coverage_lab.report.words import NOTHING, count, place, share
 from coverage_lab.rounding import percent, proportion
 from coverage_lab.sizing.rare import bound as bound_at
 
@@ -26,14 +27,14 @@ def answer(sizing: Sizing, page: Path | None) -> list[str]:
     """The lines; `page` is the report when there is one."""
     width = min(WIDEST, shutil.get_terminal_size().columns - 1)
     last = [f"{'Report':<{NAMES}}  {page}"] if page is not None else []
-    lines = [*wrapped(sizing.verdict.sentence, width), "", *_spelled(_units(sizing), width), ""]
-    for table in (_methods(sizing), _rare(sizing), _decision(sizing)):
-        lines += _aligned(table)
-    lines += _spelled(_facts(sizing), width)
-    room = MOST_LINES - len(last)
-    if len(lines) > room:
+    tables = [_aligned(table) for table in (_methods(sizing), _rare(sizing), _decision(sizing))]
+    parts = [wrapped(sizing.verdict.sentence, width), _spelled(_units(sizing), width), *tables]
+    parts.append([*_spelled(_facts(sizing), width), *last])
+    lines = [line for part in parts if part for line in (*part, "")][:-1]
+    if len(lines) > MOST_LINES:  # close together, and without what comes last
         lines = [line for line in lines if line]
-    return [*lines[:room], *last]
+        lines = [*lines[: MOST_LINES - len(last)], *last]
+    return lines
 
 
 def _spelled(facts: Iterable[tuple[str, str]], width: int) -> list[str]:
@@ -45,12 +46,11 @@ def _spelled(facts: Iterable[tuple[str, str]], width: int) -> list[str]:
 
 
 def _aligned(table: Sequence[Row]) -> list[str]:
-    """Rows under their headings, with an empty line after them; nothing for a table without rows."""
+    """Rows under their headings; nothing for a table without rows."""
     if len(table) < 2:
         return []
     widths = [max(len(row[k]) for row in table) for k in range(len(table[0]))]
-    rows = ["  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip() for row in table]
-    return [*rows, ""]
+    return ["  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True)).rstrip() for row in table]
 
 
 def _shown(plan: Plan) -> list[str]:
@@ -84,9 +84,14 @@ def _methods(sizing: Sizing) -> list[Row]:
     return [headings, *found]
 
 
+def _word(plan: Plan) -> str:
+    """What a target for the width is about."""
+    return "half-width" if plan.side == "two-sided" else "distance"
+
+
 def _headings(sizing: Sizing) -> dict[str, str]:
     """The targets for which some method was scanned, with their headings."""
-    word = "half-width" if sizing.plan.side == "two-sided" else "distance"
+    word = _word(sizing.plan)
     words = {"expected_width": word, "assurance": f"P({word} ≤ d)", "coverage": "coverage"}
     return {name: said for name, said in words.items() if any(by.get(name) for by in sizing.by_method.values())}
 
@@ -122,7 +127,7 @@ def _decision(sizing: Sizing) -> list[Row]:
     headings = (claim, "events", "wrongly ≤", f"rightly at {percent(goal.believed)}")
     found = [("exact test", *_claim(decided.critical, more, decided.size, decided.power))]
     rows = {row["method"]: row for row in rows_of(decided.by_method)}
-    for name in _shown(sizing.plan):
+    for name in sorted(_shown(sizing.plan), key=lambda name: name != PLAIN):  # which errs most, and must not be cut off
         if name in rows:
             row = rows[name]
             found.append((row["label"], *_claim(row["critical"], more, row["worst_size"], row["power"])))
@@ -175,10 +180,10 @@ def _planned(sizing: Sizing) -> Iterator[tuple[str, str]]:
 
 def _scanned(sizing: Sizing, n: int) -> Iterator[str]:
     """Coverage and widths at n of the recommended method, or of the first that may be."""
-    name = sizing.verdict.method or sizing.plan.prefer[0].name
+    name, word = sizing.verdict.method or sizing.plan.prefer[0].name, _word(sizing.plan)
     for row in rows_of(sizing.scan[(sizing.scan["method"] == name) & (sizing.scan["n"] == n)]):
         worst = f"worst interval coverage {share(row['minimum_coverage'], 'down')} at p = {place(row['minimum_at'])}"
-        width = f", expected half-width {points(row['half_width'])} at worst" if row["half_width"] is not None else ""
+        width = f", expected {word} {points_up(row['half_width'])} at worst" if row["half_width"] is not None else ""
         yield f"{_label(sizing.plan, name)}: {worst}{width}"
 
 

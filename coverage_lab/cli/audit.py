@@ -8,7 +8,7 @@ import click
 
 from coverage_lab.cli import options
 from coverage_lab.cli.door import KEPT, NO_RECOMMENDATION
-from coverage_lab.cli.folders import check_place, existing
+from coverage_lab.cli.folders import check_place, chosen_folder, existing
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from coverage_lab.records import Audit, Plan
 
 DEFINING = ("n", "range", "expected")  # options that make a plan without a file
+FROM_OPTIONS = "audit"  # the name of a plan made of options alone
 
 EXAMPLES = """\b
 Examples:
@@ -57,8 +58,8 @@ def audit(
     """
     read, name = _plan_of(plan, overrides)
     chosen, processes = options.together(read, lambda: options.processes(workers))
-    folder = out if out is not None else Path(f"{name}-report")
-    _check_folder(folder, chosen, overwrite)
+    unnamed = name == FROM_OPTIONS and not overwrite
+    folder = chosen_folder(out, Path(f"{name}-report"), unnamed, lambda at: _check_folder(at, chosen, overwrite))
     done = _computed(chosen, processes, folder, quiet)
     page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
@@ -75,7 +76,7 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
     if path is not None:
         return lambda: read_plan(path, overrides=overrides, audited=True), path.stem
     if any(overrides[name] not in (None, ()) for name in DEFINING):
-        return lambda: make_plan({}, overrides=overrides, audited=True), "audit"
+        return lambda: make_plan({}, overrides=overrides, audited=True), FROM_OPTIONS
     return lambda: read_plan(DEMONSTRATION, overrides=overrides, audited=True), DEMONSTRATION.stem
 
 

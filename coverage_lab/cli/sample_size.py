@@ -8,7 +8,7 @@ import click
 
 from coverage_lab.cli import options
 from coverage_lab.cli.door import NO_RECOMMENDATION
-from coverage_lab.cli.folders import check_place
+from coverage_lab.cli.folders import check_place, chosen_folder
 from coverage_lab.cli.progress import progress
 from coverage_lab.cli.tables import show_json
 
@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from coverage_lab.records_sizing import Sizing
 
 MODIFYING = ("confidence", "side", "horizon", "replicates", "seed")  # these change a plan; all others make one
+FROM_OPTIONS = Path("sample-size")  # the folder of a plan made of options alone
 
 EXAMPLES = """\b
 Examples:
@@ -26,8 +27,6 @@ Rule out 1 % with at most 1 failure, hoping for 0.1 %:
   coverage-lab sample-size --half-width 0.02 --assurance 0.9 --expected 0.02 --population 6200 --loss 0.05
 Show that reliability is above 90 %, believing 97 %, with power 80 %:
   coverage-lab sample-size --goal 0.9 --believed 0.97 --power 0.8
-An interval that keeps its coverage over a range, from which n on:
-  coverage-lab sample-size --range 0.005 0.05
 What a plan file asks:
   coverage-lab sample-size plan.toml
 """
@@ -85,10 +84,10 @@ def sample_size(
     Options replace what the plan says. Without PLAN they make a plan of their own; without them, too, the built-in
     demonstration is sized. The folder is named PLAN-sample-size.
     """
-    read, folder = _plan_of(plan, overrides)
+    read, usual = _plan_of(plan, overrides)
     chosen, processes = options.together(read, lambda: options.processes(workers))
-    folder = out if out is not None else folder
-    _check_folder(folder, chosen, overwrite)
+    unnamed = usual == FROM_OPTIONS and not overwrite
+    folder = chosen_folder(out, usual, unnamed, lambda at: _check_folder(at, chosen, overwrite))
     done = _computed(chosen, processes, quiet)
     page, failure = _written(done, folder, overwrite, quiet)
     _show(done, page, as_json, quiet)
@@ -106,7 +105,7 @@ def _plan_of(path: Path | None, overrides: Mapping[str, Any]) -> "tuple[Callable
     from coverage_lab.plan import DEMONSTRATION, make_plan, read_plan
 
     if path is None and any(value not in (None, ()) for name, value in overrides.items() if name not in MODIFYING):
-        return lambda: make_plan({}, overrides=overrides), Path("sample-size")
+        return lambda: make_plan({}, overrides=overrides), FROM_OPTIONS
     file = path if path is not None else DEMONSTRATION
     return lambda: read_plan(file, overrides=overrides), Path(f"{file.stem}-sample-size")
 

@@ -83,6 +83,7 @@ SHORTEST_EXACT = Method(
     faults="other published constructions differ slightly; intervals can be non-nested (n = 10: L(10) .7330 at 95 %, "
     f".7324 at 94.5 %); for n up to {LARGEST_N}",
     sides=("two-sided",),
+    slow=True,
     largest_n=LARGEST_N,
     exemptions={"nested": "each limit depends on the others, which move with the confidence too"},
 )

@@ -140,6 +140,7 @@ BLAKER = Method(
     faults="the acceptance function jumps in p, so that the set can have gaps (at 95 % first n = 31, x = 1) which the "
     "hull fills; limits stand still over ranges of confidence; always inside Clopper–Pearson",
     sides=("two-sided",),
+    slow=True,
 )
 
 STERNE = Method(
@@ -153,4 +154,5 @@ STERNE = Method(
     faults="the set can have gaps (at 95 % first n = 30, x = 1) which the hull fills; may leave Clopper–Pearson "
     "(n = 10, x = 1)",
     sides=("two-sided",),
+    slow=True,
 )

@@ -27,7 +27,12 @@ def _held(document: Document, method: str, target: str) -> str:
     if first is None:
         return f"{name} at no n"
     n = count(first)
-    return f"{name} first at n = {n}, {'never for good' if safe is None else f'from n = {count(safe)} on'}"
+    return f"{name} first at n = {n}, {_safe(document, safe)}"
+
+
+def _safe(document: Document, n: int | None) -> str:
+    """'from n = 286 on', or that it does not hold."""
+    return f"not for good up to n = {count(document['horizon'])}" if n is None else f"from n = {count(n)} on"
 
 
 def _all_held(document: Document, target: str) -> str:

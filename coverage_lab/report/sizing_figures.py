@@ -32,6 +32,7 @@ LABELS, LEFT, BOTTOM, TOP, BETWEEN = 1.42, 0.72, 0.5, 0.98, 0.45
 REACH = 1.6  # how far beyond the largest n of interest the figures go
 LEAST_REACH = 60
 DOTS_UP_TO = 150  # n in view up to which every one gets a dot
+FEW_RATES = 40  # of a small population: each gets a dot, since nothing lies between them
 HOW_MARKED = "open mark: first n · filled: holds from n on"
 
 
@@ -53,7 +54,7 @@ def panels(title: str, about: str, number: int) -> tuple[Figure, Sequence[Axes]]
 
 def heading(axes: Axes, words: str) -> None:
     """What the height stands for, above the axis."""
-    axes.set_title(words, size=8.5, loc="left", pad=5, x=-(LEFT - 0.12) / (WIDTH - LEFT - LABELS))
+    axes.set_title(words, size=8.5, loc="left", pad=5, x=-(LEFT - 0.12) / (WIDTH * axes.get_position().width))
 
 
 def found_at(document: Document, method: str, target: str) -> tuple[int | None, int | None]:
@@ -63,16 +64,15 @@ def found_at(document: Document, method: str, target: str) -> tuple[int | None, 
     return (None, None) if item is None else (item["first_n"], item["safe_n"])
 
 
-def in_view(saved: SavedSizing, names: Sequence[str]) -> int:
-    """The largest n that the figures of the scan show: all that is of interest, and a little more."""
+def in_view(saved: SavedSizing, styles: Mapping[str, Look], targets: Sequence[str]) -> int:
+    """The largest n that a figure of the scan shows: all that is of interest for the targets, and a little more."""
     document = saved.document
     horizon = int(saved.scan["n"].max())
-    listed = [
-        found_at(document, name, target)[1] for name in names for target in ("expected_width", "assurance", "coverage")
-    ]
+    names = [name for name, look in styles.items() if look.emphasised]
+    listed = [found_at(document, name, target)[1] for name in names for target in targets]
     listed += [row["n"] for row in document["at_n"]]
-    known = [n for n in listed if n is not None and n <= horizon]
-    return min(horizon, max(LEAST_REACH, round(REACH * max(known, default=horizon))))
+    largest = max((n for n in listed if n is not None), default=horizon)
+    return min(horizon, max(LEAST_REACH, round(REACH * largest)))
 
 
 def mark_found(axes: Axes, line: pd.DataFrame, column: str, found: tuple[int | None, int | None], look: Look) -> None:
@@ -97,18 +97,18 @@ def draw_lines(
         if look.emphasised:
             found = found_at(saved.document, str(name), target)
             mark_found(axes, line, column, found, look)
-            marks.append(_label(saved.document, str(name), found, line, column, look))
+            weight = "bold" if name == chief_of(saved.document) else "normal"
+            n, value = (float(end) for end in line[["n", column]].iloc[-1])
+            low, high = axes.get_ylim()
+            words = _held(saved.document, str(name), found[1])
+            marks.append((words, n, min(max(value, low), high), look.colour, weight))
     return marks
 
 
-def _label(
-    document: Document, name: str, found: tuple[int | None, int | None], line: pd.DataFrame, column: str, look: Look
-) -> Mark:
-    """'Wilson score / holds from 380', at the right end of its line."""
-    held = "never for good" if found[1] is None else f"holds from {count(found[1])}"
-    weight = "bold" if name == chief_of(document) else "normal"
-    words = f"{wrapped(label(as_audit(document), name), 17)}\n{held}"
-    return words, float(line["n"].iloc[-1]), float(line[column].iloc[-1]), look.colour, weight
+def _held(document: Document, name: str, safe: int | None) -> str:
+    """'Wilson score / holds from 380'."""
+    held = f"not up to {count(document['horizon'])}" if safe is None else f"holds from {count(safe)}"
+    return f"{wrapped(label(as_audit(document), name), 17)}\n{held}"
 
 
 def at_recommended(axes: Axes, document: Document) -> None:
@@ -128,8 +128,8 @@ def worst_coverage(saved: SavedSizing) -> Figure:
     """Worst interval coverage over the planned range at every n: the list, plus-or-minus and the methods asked for."""
     document = saved.document
     alike = as_audit(document)
-    judged = [row["method"] for row in document["methods"] if row["by"]["coverage"] is not None]
-    top = in_view(saved, judged)
+    styles = looks(alike)
+    top = in_view(saved, styles, ("coverage",))
     figure, (axes,) = panels("Worst interval coverage against n", _about(document), 1)
     values = saved.scan.loc[saved.scan["n"] <= top, "minimum_coverage"].dropna().to_numpy(float)
     scale_coverage(axes, "y", values, document["alpha"])
@@ -137,7 +137,7 @@ def worst_coverage(saved: SavedSizing) -> Figure:
     at_recommended(axes, document)
     for (_, value), dashes in zip(level_lines(alike), ((), (1, 2)), strict=False):
         axes.axhline(value, color=INK, lw=0.8, ls=(0, dashes or None), zorder=1)
-    marks = draw_lines(axes, saved, "minimum_coverage", "coverage", looks(alike), top)
+    marks = draw_lines(axes, saved, "minimum_coverage", "coverage", styles, top)
     heading(axes, "worst interval coverage")
     label_lines(axes, alike, marks, PANEL)
     return figure
@@ -147,11 +147,12 @@ def precision(saved: SavedSizing) -> Figure:
     """Expected half-width and assurance at every n."""
     document = saved.document
     styles = looks(as_audit(document))
-    top = in_view(saved, [name for name, look in styles.items() if look.emphasised])
+    top = in_view(saved, styles, ("expected_width", "assurance"))
     asked = document["targets"]["precision"]
     number = 1 if asked["assurance"] is None else 2
     about = _about(document)
-    figure, grid = panels(f"Expected {half_words(document)}{' and assurance' if number > 1 else ''}", about, number)
+    what = "Half-width" if document["side"] == "two-sided" else "Distance of the bound"
+    figure, grid = panels(f"{what}{' and assurance' if number > 1 else ''} against n", about, number)
     _half_width(grid[0], saved, styles, top)
     if number > 1:
         _assurance(grid[1], saved, styles, top)
@@ -162,8 +163,9 @@ def _half_width(axes: Axes, saved: SavedSizing, styles: Mapping[str, Look], top:
     """The expected half-width at the worst proportion of the range."""
     limit = float(saved.document["targets"]["precision"]["half_width"])
     axis_of_n(axes, top)
-    axes.set_ylim(0, 3 * limit)
-    percent_axis(axes.yaxis)
+    reached = saved.scan.loc[saved.scan["n"] == top, "half_width"].dropna()
+    axes.set_ylim(0, max(3 * limit, 1.2 * float(reached.max())))
+    axes.yaxis.set_major_formatter(lambda value, _: f"{100 * value:g}")
     at_recommended(axes, saved.document)
     axes.axhline(limit, color=INK, lw=0.8, ls=(0, (1, 2)), zorder=1)
     marks = draw_lines(axes, saved, "half_width", "expected_width", styles, top)
@@ -202,6 +204,8 @@ def operating(saved: SavedSizing) -> Figure:
         row = next(row for row in document["rare"] if row["events"] == allowed)
         words, look = _operating_words(row, target), Look(colour, dashes)
         axes.plot(line["p"], line["probability"], color=colour, ls=look.line, lw=1.4, label=words, zorder=3)
+        if len(line) <= FEW_RATES:
+            axes.plot(line["p"], line["probability"], ".", color=colour, ms=5, zorder=3)
         if target["hoped_for"] is not None:
             at = row["probability_at_hoped_for"]
             axes.plot(target["hoped_for"], at, marker, ms=6, mew=1, mfc=colour, mec="white", zorder=4, clip_on=False)
@@ -273,12 +277,11 @@ def _saw(
     axes.plot(shown["n"], shown[column], color=look.colour, lw=look.weight, marker=dot, ms=3, zorder=3)
     percent_axis(axes.yaxis)
     axes.axhline(asked[0], color=INK, lw=0.8, ls=(0, (1, 2)), zorder=1)
-    found_n = (found["first_n"], found["safe_n"])
-    mark_found(axes, shown, column, found_n, look)
-    marks: list[Mark] = [(asked[1], float(shown["n"].iloc[-1]), asked[0], SOFT, "normal")]
-    for n, words, weight in zip(found_n, ("first n", "holds from n ="), ("normal", "bold"), strict=True):
+    axes.plot([], [], color=INK, lw=0.8, ls=(0, (1, 2)), label=asked[1])
+    mark_found(axes, shown, column, (found["first_n"], found["safe_n"]), look)
+    for n, words, face in ((found["first_n"], "first n", "white"), (found["safe_n"], "holds from n", look.colour)):
         here = shown[shown["n"] == n]
         if not here.empty:
-            value = float(here[column].iloc[0])
-            marks.append((f"{words} {count(n)}:\n{written(value)}", float(n), value, look.colour, weight))
-    label_ends(axes, marks, PANEL)
+            told = f"{words} = {count(n)}:\n{written(float(here[column].iloc[0]))}"
+            axes.plot([], [], look.marker, ms=6.5, mew=1.2, mfc=face, mec=look.colour, label=told)
+    axes.legend(loc="upper left", bbox_to_anchor=(1.0, 1.0), frameon=False, fontsize=7.6, handlelength=1.2)

@@ -9,7 +9,9 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
 from coverage_lab.checks import InputFault, shown
 from coverage_lab.plan_text import plan_digest, plan_text
@@ -34,9 +36,11 @@ COLUMNS: Mapping[str, tuple[str, ...]] = {
     "characteristic": ("events", "n", "p", "probability"),
     "decision": ("n", "critical", "size", "power"),
 }
-WHOLE = {"n": "int64", "events": "int64", "critical": "int64", "method": "str"}
+WHOLE = ("n", "events", "critical")
+WORDS = ("method",)
 KEYS = (
-    *("plan", "confidence", "side", "alpha", "standard", "outcome", "targets", "labels", "at_n", "methods", "formula"),
+    *("plan", "confidence", "side", "alpha", "standard", "outcome", "targets", "labels", "at_n", "claim_at_n"),
+    *("methods", "formula"),
     *("rare", "zero_events", "seen", "decision", "inflated", "verdict", "cautions", "provenance", "horizon"),
 )
 
@@ -60,7 +64,7 @@ def sizing_document(sizing: Sizing, provenance: Mapping[str, Any] | None = None)
     """The exact content of sample-size.json: what `--json` prints, and what it takes to make the page from it.
 
     labels: method -> its name for people. at_n: the scan's figures at the recommended n (or the closest one) for the
-    recommended method and plus-or-minus. targets: what the plan asks for.
+    recommended method and plus-or-minus; claim_at_n: the exact test there. targets: what the plan asks for.
     """
     plan = sizing.plan
     document = {
@@ -77,6 +81,7 @@ def sizing_document(sizing: Sizing, provenance: Mapping[str, Any] | None = None)
         "targets": _targets(plan),
         "labels": {method.name: method.label for method in (*plan.prefer, *plan.methods)},
         "at_n": _at_n(sizing),
+        "claim_at_n": _claim_at_n(sizing),
         "provenance": dict(provenance or _provenance(plan)),
     }
     document["cautions"] = [*sizing.cautions, *standing_cautions(document)]
@@ -97,6 +102,15 @@ def _at_n(sizing: Sizing) -> list[dict[str, Any]]:
     n = verdict.n if verdict.n is not None else best.get("n")
     names = [verdict.method or best.get("method"), WALD]
     return rows_of(sizing.scan[(sizing.scan["n"] == n) & sizing.scan["method"].isin(names)])
+
+
+def _claim_at_n(sizing: Sizing) -> dict[str, Any] | None:
+    """The exact test at the recommended n, which another target may have set; None where it was not looked at."""
+    if sizing.decision is None or sizing.decision.n is None:
+        return None
+    table = sizing.decision.by_n
+    found = rows_of(table[table["n"] == sizing.verdict.n])
+    return found[0] if found else None
 
 
 def _provenance(plan: Plan) -> dict[str, Any]:
@@ -163,23 +177,18 @@ def _read(path: Path, name: str, wanted: bool) -> pd.DataFrame:
     columns = list(COLUMNS[name])
     if not wanted:
         return pd.DataFrame(columns=columns)
-    types = {column: WHOLE.get(column, "float64") for column in columns}
     try:
-        return pd.read_csv(
-            path,
-            usecols=columns,
-            dtype=types,
-            float_precision="round_trip",
-            keep_default_na=False,
-            na_values=_gaps(types),
-        )[columns]
+        texts = pd.read_csv(path, usecols=columns, dtype=object, keep_default_na=False)
+        return pd.DataFrame({column: _values(column, texts[column].to_numpy(dtype=object)) for column in columns})
     except ValueError as error:  # columns that are missing, cells that are no numbers, text that is not UTF-8
         raise InputFault(f"{path}: expected the table that a sample size saved, but: {error}") from None
 
 
-def _gaps(types: Mapping[str, str]) -> dict[str, list[str]]:
-    """Only a number can be missing; a method's name stays what it is."""
-    return {column: [""] for column, kind in types.items() if kind == "float64"}
+def _values(column: str, texts: NDArray[np.object_]) -> NDArray[Any]:
+    """One column from its texts: a method's name stays what it is, numbers keep every digit."""
+    if column in WORDS:
+        return texts
+    return texts.astype(np.int64) if column in WHOLE else np.where(texts == "", "nan", texts).astype(float)
 
 
 def check_sizing_target(folder: Path, plan_document: Mapping[str, Any], overwrite: bool) -> None:

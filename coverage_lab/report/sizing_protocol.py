@@ -5,14 +5,15 @@ from collections.abc import Iterator
 from coverage_lab.report.chapters import Chapter
 from coverage_lab.report.protocol import one_line
 from coverage_lab.report.sizing_words import (
-    NEEDS,
+    MADE_UP,
     as_audit,
-    assured,
     at_most,
     chance,
+    claim_at_n,
     claimed,
     goal,
     half_words,
+    looked_at,
     name_of,
     needs_words,
     rare_row,
@@ -68,7 +69,7 @@ def _size(document: Document) -> str:
     steps = rung_words(document)
     if not steps:
         return f"{said} No design effect, finite population, loss or cluster was allowed for."
-    return f"{said} From n to units: {'; '.join(steps)}. In all {count(ladder['units'])} units will be taken."
+    return f"{said} From n to units: {'; '.join(steps)}. In all {count(ladder['units'])} units will be recruited."
 
 
 def rung_words(document: Document) -> list[str]:
@@ -77,7 +78,7 @@ def rung_words(document: Document) -> list[str]:
     found, before = [], ladder["base"]
     for name, what in made_up_for(document).items():
         if what or ladder[name] != before:
-            found.append(f"{count(ladder[name])} {what or 'after the next step'}")
+            found.append(f"{count(ladder[name])} {what or MADE_UP[name]}")
         before = ladder[name]
     return found
 
@@ -110,7 +111,7 @@ def _interval(document: Document) -> str:
         f"The proportion with the outcome “{one_line(document['outcome']['name'])}” will be reported with a "
         f"{level(document)} by the method “{label}” ({one_line(verdict['method'])}). Over true proportions from "
         f"{range_words(low, high)} (basis: {basis}) it gives {_gives(document)}. That holds at n = {count(n)} and at "
-        f"every larger n that was checked: {_checked(document)}."
+        f"every larger n that was looked at: {_checked(document)}."
     )
 
 
@@ -120,8 +121,9 @@ def _gives(document: Document) -> str:
     if precision is not None:
         said.append(f"an expected {half_words(document)} of at most {goal(precision['half_width'])}")
         if precision["assurance"] is not None:
-            expected = place(document["outcome"]["expected"])
-            said.append(f"at {expected} a {assured(document)} of at least {share(precision['assurance'])}")
+            what = f"the {half_words(document)} is at most {goal(precision['half_width'])}"
+            at = f"at a true proportion of {place(document['outcome']['expected'])}"
+            said.append(f"a probability of at least {share(precision['assurance'])} that {what}, {at}")
     row = _chosen(document)
     if row is None or row["by"]["coverage"] is not None:
         said.append(standard_words(as_audit(document)))
@@ -137,7 +139,7 @@ def _checked(document: Document) -> str:
     """Which n were looked at for the recommended method."""
     row = _chosen(document)
     by = row["by"].values() if row is not None else ()
-    return "; ".join(dict.fromkeys(item["checked"] for item in by if item is not None))
+    return "; ".join(dict.fromkeys(looked_at(item["checked"]) for item in by if item is not None))
 
 
 def _rare(document: Document) -> str | None:
@@ -159,20 +161,18 @@ def _rare(document: Document) -> str | None:
 
 
 def _claim(document: Document) -> str:
-    """The decision's rule and its two chances."""
-    found, target = document["decision"], document["targets"]["decision"]
-    larger = (
-        "" if document["verdict"]["n"] == found["n"] else f" {NEEDS['decision'].capitalize()} needs no more than that."
+    """The decision's rule and its two chances, at the recommended n."""
+    found, target, here = document["decision"], document["targets"]["decision"], claim_at_n(document)
+    first, safe = found["first_n"], found["safe_n"]
+    lucky = (
+        f" (it is first reached at n = {count(first)}, but not kept by the next larger ones)" if first != safe else ""
     )
-    first = found["first_n"]
-    lucky = f" (the first n that reaches it, {count(first)}, is followed by larger ones that do not)"
     return (
-        f"That {claimed(document)} will be claimed at {rule(found['claim'], found['critical'], found['n'])} (exact "
-        f"binomial test, one-sided α = {percent(target['alpha'])}): with probability at most {risk(found['size'])} "
-        f"wrongly, and {chance(found['power'])} rightly if it is {place(target['believed'])}. The power asked for, "
-        f"{place(target['power'])}, holds from n = {count(found['safe_n'])} on"
-        f"{lucky if first != found['safe_n'] else ''}.{larger} With another number of units evaluated, the critical "
-        "count is that of the exact test at that number."
+        f"That {claimed(document)} will be claimed at {rule(found['claim'], here['critical'], here['n'])} (exact "
+        f"binomial test, one-sided α = {percent(target['alpha'])}): with probability at most {risk(here['size'])} "
+        f"wrongly, and {chance(here['power'])} rightly if it is {place(target['believed'])}. The power asked for, "
+        f"{place(target['power'])}, holds from n = {count(safe)} on{lucky}. With another number of units evaluated, "
+        "the critical count is that of the exact test at that number."
     )
 
 

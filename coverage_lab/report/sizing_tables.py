@@ -7,6 +7,7 @@ from coverage_lab.report.columns import columns as columns_of
 from coverage_lab.report.sizing_folder import SavedSizing
 from coverage_lab.report.sizing_protocol import made_up_for
 from coverage_lab.report.sizing_words import (
+    MADE_UP,
     RUNGS,
     as_audit,
     assured,
@@ -22,6 +23,7 @@ from coverage_lab.report.sizing_words import (
     rare_row,
     risk,
     rule,
+    short_target,
     target_heads,
 )
 from coverage_lab.report.tables import Cell, Column, Table
@@ -29,7 +31,6 @@ from coverage_lab.report.words import NOTHING, Document, Row, count, place
 from coverage_lab.rounding import percent
 
 NOT_SCANNED = Cell("not scanned", None, "none")
-SHORT = {"expected_width": "Expected half-width", "assurance": "Assurance", "coverage": "Coverage"}
 
 
 def number(n: int | None, otherwise: str = NOTHING) -> Cell:
@@ -75,11 +76,11 @@ def targets(document: Document) -> Table | None:
     if not set_:
         return None
     shown = [name for name in set_ if len(set_) > 1]  # a single target is what "all" are
-    titles = [f"{SHORT[name]}: {which}" for name in shown for which in ("first n", "holds from n on")]
+    titles = [f"{short_target(document, name)}: {which}" for name in shown for which in ("first n", "holds from n on")]
     last = ["All targets: first n", "All targets: holds from n on"] if shown else ["First n", "Holds from n on"]
     columns = (Column("Method", numeric=False), *map(Column, (*titles, *last)))
     rows = tuple(_found(document, row, shown) for row in document["methods"])
-    caption = f"n by method; checked up to n = {count(document['horizon'])}"
+    caption = "The first n that meets the targets, and the n from which they hold, by method"
     return Table("targets", caption, columns, rows)
 
 
@@ -106,7 +107,10 @@ def ladder(document: Document) -> Table | None:
         return None
     why = made_up_for(document)
     counted = binding(document) in ("rare", "seen") and why["finite"]
-    said = {"base": "the recommended n", **{name: words or "nothing planned" for name, words in why.items()}}
+    said, before = {"base": "the recommended n"}, steps["base"]
+    for name, words in why.items():
+        said[name] = words or ("nothing planned" if steps[name] == before else MADE_UP[name])
+        before = steps[name]
     if counted:
         said["finite"] += "; already part of the calculated n"
     rows = tuple(
@@ -202,7 +206,7 @@ def _judged(document: Document, row: Row) -> tuple[Cell, ...]:
 def alternatives(document: Document) -> Table | None:
     """What each other method would cost in units, and what speaks against it."""
     verdict = document["verdict"]
-    if not verdict["alternatives"]:
+    if not verdict["alternatives"] or verdict["n"] is None:
         return None
     first: tuple[tuple[Cell, ...], ...] = ()
     if verdict["method"] is not None and "interval" in verdict["needs"]:
@@ -211,7 +215,7 @@ def alternatives(document: Document) -> Table | None:
         first = ((Cell(label, None, "chief"), own, number(verdict["units"]), Cell("reference"), Cell(NOTHING)),)
     rows = tuple(_alternative(document, item) for item in verdict["alternatives"])
     heads = (Column("Holds from n on"), Column("Units"), Column("Cost in units"), Column("Against", numeric=False))
-    caption = "What another method would cost; not scanned targets left out"
+    caption = "The n that meets every target which a method was scanned for, and what it would cost"
     return Table("alternatives", caption, (Column("Method", numeric=False), *heads), (*first, *rows))
 
 

@@ -6,39 +6,25 @@ from typing import Any
 from coverage_lab.plan_text import plan_text
 from coverage_lab.report import sizing_tables
 from coverage_lab.report.protocol import pieces
+from coverage_lab.report.sizing_answer import facts, headline, notes
 from coverage_lab.report.sizing_folder import OPTIONAL, SavedSizing
-from coverage_lab.report.sizing_protocol import chapters, made_up_for, rung_words
+from coverage_lab.report.sizing_protocol import chapters, made_up_for
 from coverage_lab.report.sizing_words import (
     as_audit,
-    assured,
-    at_most,
-    at_n,
-    binding,
-    capital,
-    chance,
-    chief_of,
     claimed,
     events,
-    goal,
-    half,
-    half_words,
     how_checked,
+    looked_at,
     name_of,
-    needs_words,
     of_claiming,
     of_ruling_out,
     plain_claim,
-    rare_row,
-    risk,
-    rule,
     seen_words,
     target_heads,
-    taught,
 )
 from coverage_lab.report.view import REFERENCES as OF_COVERAGE
-from coverage_lab.report.view import SENTENCE, Fact
+from coverage_lab.report.view import SENTENCE
 from coverage_lab.report.words import (
-    NOUNS,
     Document,
     count,
     joined,
@@ -46,7 +32,6 @@ from coverage_lab.report.words import (
     place,
     planned_range,
     range_words,
-    share,
     standard_words,
     weighting,
 )
@@ -96,9 +81,7 @@ def page_content(saved: SavedSizing) -> dict[str, Any]:
         "verdict": document["verdict"],
         "headline": headline(document),
         "facts": list(facts(document)),
-        "notes": [
-            words for words in (closest(document), needs(document), taught(document), plain_claim(document)) if words
-        ],
+        "notes": notes(document),
         "brief_cautions": [SENTENCE.split(caution)[0] for caution in document["cautions"]],
         "cautions": document["cautions"],
         "tables": tables,
@@ -107,7 +90,7 @@ def page_content(saved: SavedSizing) -> dict[str, Any]:
         "horizon": None if document["horizon"] is None else count(document["horizon"]),
         "zero_events": document["zero_events"],
         "seen": seen_words(document),
-        "one_sided": of_ruling_out(document["confidence"]),
+        "one_sided": of_ruling_out(document["confidence"]) if document["rare"] else None,
         "claim_words": list(claim_words(document)),
         "plain_claim": plain_claim(document),
         "plan_rows": [(name, pieces(words)) for name, words in plan_rows(document)],
@@ -147,102 +130,15 @@ def about(document: Document) -> list[str]:
     return [*found, f"{percent(document['confidence'])} confidence"]
 
 
-def headline(document: Document) -> str:
-    """The answer in one line."""
-    verdict, needs_ = document["verdict"], document["verdict"]["needs"]
-    if verdict["status"] != "recommended":
-        return "No n meets the targets"
-    n = f"n = {count(verdict['n'])}"
-    if "interval" in needs_:
-        return f"{n} with the {name_of(document, verdict['method'])} {NOUNS[document['side']]}"
-    if "decision" in needs_ and binding(document) == "decision":
-        found = document["decision"]
-        return f"{n}: claim at {rule(found['claim'], found['critical'])}"
-    row = rare_row(document)
-    return f"{n} units" if row is None else f"{n} units, {at_most(row['events'])}"
-
-
-def closest(document: Document) -> str | None:
-    """That the figures are of the closest method when none is named."""
-    best = document["verdict"]["best"]
-    if best is None:
-        return None
-    return f"Closest, not recommended: {best['label']} at n = {count(best['n'])}. The figures above are its own."
-
-
-def needs(document: Document) -> str | None:
-    """What each target asks for, as a sentence."""
-    words = needs_words(document)
-    return f"{capital(words)}; the largest, with what the sample has to make up for, decides." if words else None
-
-
-def facts(document: Document) -> Iterator[Fact]:
-    """The figures behind the answer."""
-    verdict, ladder = document["verdict"], document["inflated"]
-    if ladder is not None and rung_words(document):
-        yield Fact(
-            "Units to take", count(verdict["units"]), f"n = {count(verdict['n'])}; {'; '.join(rung_words(document))}"
-        )
-    yield from _interval_facts(document)
-    row, target = rare_row(document), document["targets"]["rare"]
-    if row is not None and row["probability_at_hoped_for"] is not None:
-        name = f"Probability of {at_most(row['events'])} at a true rate of {place(target['hoped_for'])}"
-        yield Fact(name, chance(row["probability_at_hoped_for"]), f"in {count(row['n'])} units")
-    if row is not None:
-        name = f"Upper bound after {events(row['events'])} in {count(row['n'])} units"
-        yield Fact(name, place(row["bound"], "up"), f"{percent(document['confidence'])} confidence, one-sided")
-    seen = document["seen"]
-    if seen is not None:
-        name = f"Probability to see at least {events(seen['events'])} at {place(seen['rate'])}"
-        yield Fact(name, chance(seen["probability"]), f"in {count(seen['n'])} units")
-    if document["decision"] is not None and document["decision"]["n"] is not None:
-        yield from _claim_facts(document)
-
-
-def _interval_facts(document: Document) -> Iterator[Fact]:
-    """Coverage and width at the recommended n, or at the closest."""
-    row = at_n(document, chief_of(document))
-    if row is None:
-        return
-    entry = next(item for item in document["methods"] if item["method"] == row["method"])
-    n = count(row["n"])
-    if row["half_width"] is not None:
-        note = f"at n = {n}, worst proportion of the planned range; asked: at most {_asked(document)}"
-        yield Fact(f"Expected {half_words(document)}", half(row["half_width"]), note)
-    if row["assurance"] is not None and document["targets"]["precision"]["assurance"] is not None:
-        asked = share(document["targets"]["precision"]["assurance"])
-        note = f"at n = {n} and a true proportion of {place(document['outcome']['expected'])}; asked: at least {asked}"
-        yield Fact(capital(assured(document)), chance(row["assurance"]), note)
-    if row["minimum_coverage"] is not None:
-        covers = entry["by"]["coverage"]
-        held = f"; the standard holds from n = {count(covers['safe_n'])} on" if covers and covers["safe_n"] else ""
-        note = f"at n = {n}, approached at p = {place(row['minimum_at'])}{held}"
-        yield Fact("Worst interval coverage", share(row["minimum_coverage"], "down"), note)
-
-
-def _asked(document: Document) -> str:
-    return goal(document["targets"]["precision"]["half_width"])
-
-
-def _claim_facts(document: Document) -> Iterator[Fact]:
-    """The exact test's rule and its chances."""
-    found, target = document["decision"], document["targets"]["decision"]
-    yield Fact(f"Claim that {claimed(document)} at", rule(found["claim"], found["critical"]), f"of {count(found['n'])}")
-    size, alpha = risk(found["size"]), percent(target["alpha"])
-    yield Fact("Claimed wrongly, at most", size, f"attained size; α = {alpha}, one-sided")
-    name = f"Claimed rightly, if the proportion is {place(target['believed'])}"
-    yield Fact(name, chance(found["power"]), f"power; asked: {place(target['power'])}")
-
-
 def claim_words(document: Document) -> Iterator[str]:
     """What the two tables of the claim show."""
     found = document["decision"]
     if found is None:
         return
     if found["n"] is None:
-        yield f"No n reaches the power for good: {found['checked']}."
+        yield f"No n reaches the power for good; looked at: {looked_at(found['checked'])}."
         return
-    yield f"{capital(found['checked'])}."
+    yield f"Looked at: {looked_at(found['checked'])}."
     if found["first_n"] != found["safe_n"]:
         asked = place(document["targets"]["decision"]["power"])
         yield (
@@ -304,7 +200,7 @@ def references(document: Document) -> Iterator[str]:
         yield CLOPPER
     if document["decision"]:
         yield CHERNICK
-    if document["inflated"]:
+    if document["inflated"] and made_up_for(document)["finite"]:
         yield COCHRAN
     if document["zero_events"]:
         yield HANLEY

@@ -1,11 +1,11 @@
 """The phrases of a sample-size report, from a saved document (sample-size.json) alone."""
 
 from collections import Counter
-from collections.abc import Mapping
+from collections.abc import Iterator
 from typing import Any
 
 from coverage_lab.records import tail_of
-from coverage_lab.report.words import Document, Row, count, joined, place, points_places, share
+from coverage_lab.report.words import Document, Row, count, joined, place, points_places, share, standard_words
 from coverage_lab.rounding import percent, rounded
 from coverage_lab.sentences import CONDITIONAL, OF_ZERO, of_side
 
@@ -30,24 +30,35 @@ RUNGS = {
     "design_effect": "Design effect",
     "finite": "Finite population",
     "loss": "Losses",
-    "units": "Whole clusters",
+    "units": "Units to recruit",
+}
+MADE_UP = {
+    "design_effect": "for the design effect",
+    "finite": "in the finite population",
+    "loss": "to make up for losses",
+    "units": "in whole clusters",
 }
 
 FIXED = (
-    "Fix n, the method, the side and what will be claimed before data are seen; the number evaluated is seldom exactly "
-    "the number planned, so the n from which every larger one holds is recommended, not the first."
+    "Fix n, the method, the side and what will be claimed before data are seen. The number evaluated is seldom exactly "
+    "the number planned; therefore the n from which every larger one holds is recommended, not the first."
 )
 QUALIFIED = (
     "These sizes support, and never replace, qualified statistical review and the rules that apply where the study is "
     "done."
 )
 OF_THE_MODEL = (
-    "Every figure is conditional on the sampling model, in which each unit is an event independently of the others; "
-    "none says anything about bias: who was not reached, what was misclassified, what was lost."
+    "Every figure is conditional on the sampling model, in which each unit is an event independently of the others. "
+    "None says anything about bias: who was not reached, what was misclassified, what was lost."
 )
 OF_CORRELATION = (
-    "Chances of ruling out and of claiming are those of n independent units. The design effect and the finite "
-    "population only change how many units are taken: analyse such a sample by a method made for it."
+    "Chances of ruling out and of claiming are those of n independent units. The design effect and whole clusters only "
+    "change how many units are taken: analyse such a sample by a method made for it."
+)
+
+
+OF_FINITE_CLAIMS = (
+    "The claim's chances are those of an unlimited population; the finite one enters by the usual correction of n."
 )
 
 
@@ -97,6 +108,12 @@ def risk(value: float) -> str:
 def half_words(document: Document) -> str:
     """What the plan's half-width limits: of a two-sided interval, or of a bound."""
     return HALVES[document["side"]]
+
+
+def short_target(document: Document, target: str) -> str:
+    """A target of the interval as a table's heading."""
+    width = "half-width" if document["side"] == "two-sided" else "distance"
+    return {"expected_width": f"Expected {width}", "assurance": "Assurance", "coverage": "Coverage"}[target]
 
 
 def width_limit(document: Document) -> float:
@@ -151,6 +168,12 @@ def rule(claim: str, critical: int | None, n: int | None = None) -> str:
     return f"{count(critical)} events or {'more' if claim == 'above' else 'fewer'}{of}"
 
 
+def claim_at_n(document: Document) -> Row:
+    """The exact test at the recommended n, else at its own: n, critical, size, power."""
+    found = document["claim_at_n"] or document["decision"]
+    return {name: found[name] for name in ("n", "critical", "size", "power")}
+
+
 def claimed(document: Document) -> str:
     """'the proportion is above 90 %'."""
     return f"the proportion is {document['decision']['claim']} {place(document['targets']['decision']['goal'])}"
@@ -162,16 +185,17 @@ def target_heads(document: Document) -> dict[str, str]:
     for row in document["methods"]:
         found |= {name: "" for name, item in row["by"].items() if item is not None}
     precision = document["targets"]["precision"]
-    heads = {"coverage": "Coverage standard"}
+    heads = {"coverage": capital(standard_words(as_audit(document)))}
     if precision is not None:
         heads["expected_width"] = f"Expected {half_words(document)} at most {goal(precision['half_width'])}"
-        heads["assurance"] = f"{capital(assured(document))}, at least {share(precision['assurance'])}"
+        expected = place(document["outcome"]["expected"])
+        sure = f"at least {share(precision['assurance'])} at a true proportion of {expected} (assurance)"
+        heads["assurance"] = f"{capital(assured(document))}, {sure}"
     return {name: heads[name] for name in ("expected_width", "assurance", "coverage") if name in found}
 
 
 def how_checked(document: Document) -> list[str]:
     """Which n were looked at: once for all that agree, then one by one."""
-    heads = target_heads(document)
     said = [
         (row["method"], target, item["checked"])
         for row in document["methods"]
@@ -180,11 +204,16 @@ def how_checked(document: Document) -> list[str]:
     ]
     usual = Counter(checked for _, _, checked in said).most_common(1)[0][0]
     odd = [
-        f"{capital(name_of(document, method))}, {heads[target][:1].lower()}{heads[target][1:]}: {checked}."
+        f"{capital(name_of(document, method))}, {short_target(document, target).lower()}: {looked_at(checked)}."
         for method, target, checked in said
         if checked != usual
     ]
-    return [f"{capital(usual)}{' but where stated otherwise' if odd else ''}; none was skipped by halving.", *odd]
+    return [f"Looked at: {looked_at(usual)}{', unless stated otherwise' if odd else ''}.", *odd]
+
+
+def looked_at(checked: str) -> str:
+    """Which n were looked at: 'every n from 1 to 2000'."""
+    return checked.replace(" checked", "")
 
 
 def taught(document: Document) -> str | None:
@@ -255,14 +284,20 @@ def standing_cautions(document: Document) -> list[str]:
         said.append(OF_ZERO)
     if decision is not None:
         said.append(of_claiming(decision["alpha"]))
-    if document["inflated"] and _stretched(document["inflated"]) and (document["rare"] or decision):
-        said.append(OF_CORRELATION)
+    said += _of_the_ladder(document)
     return [*said, CONDITIONAL if document["methods"] else OF_THE_MODEL, FIXED, QUALIFIED]
 
 
-def _stretched(ladder: Mapping[str, Any]) -> bool:
-    """Whether design effect, population or clusters change n."""
-    return len({ladder["base"], ladder["design_effect"], ladder["finite"]}) > 1 or ladder["whole_clusters"] is not None
+def _of_the_ladder(document: Document) -> Iterator[str]:
+    """What the steps from n to units leave as it was."""
+    ladder, claim = document["inflated"], document["decision"]
+    if ladder is None:
+        return
+    clustered = ladder["design_effect"] != ladder["base"] or ladder["whole_clusters"] is not None
+    if clustered and (claim or document["rare"]):
+        yield OF_CORRELATION
+    if claim and ladder["finite"] != ladder["design_effect"]:
+        yield OF_FINITE_CLAIMS
 
 
 def of_ruling_out(confidence: float) -> str:

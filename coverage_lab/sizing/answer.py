@@ -57,25 +57,31 @@ def size(
     others = max([_decision_size(plan), events.n if events else 0, *(int(n) for n in rare["n"].dropna())])
     searched = search(plan, methods, targets, others, workers, progress) if targets.names else None
     horizon = searched.horizon if searched else min(plan.horizon or default_horizon(others), EXACT_UP_TO)
-    decision = _decided(plan, horizon)
-    verdict, steps = recommend(Gathered(plan, targets, inflation, searched, rare, events, decision))
+    gathered = Gathered(plan, targets, inflation, searched, rare, events, _decided(plan, horizon))
+    return _assembled(gathered, horizon, left_out)
+
+
+def _assembled(gathered: Gathered, horizon: int, left_out: tuple[str, ...]) -> Sizing:
+    """The answers with the recommendation that follows from them."""
+    plan, searched, population = gathered.plan, gathered.search, gathered.inflation.population
+    verdict, steps = recommend(gathered)
     answer = Sizing(
         plan=plan,
-        horizon=horizon if searched or decision else None,
+        horizon=horizon if searched or gathered.decision else None,
         by_method=searched.by_method if searched else {},
-        methods=_methods(searched, targets),
+        methods=_methods(searched, gathered.targets),
         scan=_scan_table(searched),
-        rare=rare,
-        characteristic=characteristic(rare, plan.rare, inflation.population),
+        rare=gathered.rare,
+        characteristic=characteristic(gathered.rare, plan.rare, population),
         formula=baseline(plan, verdict.method),
-        zero_events=zero_statement(rare, plan.confidence, inflation.population),
-        seen=events,
-        decision=decision,
+        zero_events=zero_statement(gathered.rare, plan.confidence, population),
+        seen=gathered.seen,
+        decision=gathered.decision,
         inflated=steps,
         verdict=verdict,
         cautions=(),
     )
-    return replace(answer, cautions=cautions(answer, inflation, left_out))
+    return replace(answer, cautions=cautions(answer, gathered.inflation, left_out))
 
 
 def for_target(plan: Plan, inflation: Inflation) -> Inflation:

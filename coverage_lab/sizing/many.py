@@ -123,9 +123,10 @@ class Prior:
     @classmethod
     def on(cls, rows: Rows, over: Range) -> "Prior":
         """On rows with every event that the range can produce."""
-        a, b = rows.events + over.prior[0], rows.trials - rows.events + over.prior[1]
+        a = np.asarray(rows.events + over.prior[0], dtype=np.float64)
+        b = np.asarray(rows.trials - rows.events + over.prior[1], dtype=np.float64)
         weight = betabinomial(rows.events, rows.trials, *over.prior) / over.mass
-        at_low, at_high = betainc(a, b, over.low), betainc(a, b, over.high)
+        at_low, at_high = (np.asarray(betainc(a, b, end), dtype=np.float64) for end in (over.low, over.high))
         return cls(rows, over, a, b, weight, at_low, at_high, np.zeros(len(rows.n)))
 
     def within(self, rows: Rows) -> "Prior":
@@ -133,8 +134,8 @@ class Prior:
         place = (self.rows.start - self.rows.first)[rows.row] + rows.events
         rest = self.weight * (self.at_high - self.at_low)
         rest[place] = 0.0
-        columns = (column[place] for column in (self.a, self.b, self.weight, self.at_low, self.at_high))
-        return Prior(rows, self.over, *columns, left_out=self.rows.total(rest))
+        a, b, weight, at_low, at_high = (v[place] for v in (self.a, self.b, self.weight, self.at_low, self.at_high))
+        return Prior(rows, self.over, a, b, weight, at_low, at_high, left_out=self.rows.total(rest))
 
     def mean_miss(self, lower: Array, upper: Array) -> Array:
         """The mean miss rate over the range of every row, in closed form; (rows,).

@@ -64,5 +64,5 @@ def _results(
         for task in tasks[k:]:
             yield function(*task)
         return
-    pool = Parallel(n_jobs=workers, return_as="generator")
+    pool = Parallel(n_jobs=workers, return_as="generator", batch_size=1)  # batches would leave one worker idle
     yield from pool(delayed(function)(*task) for task in tasks[k:])

@@ -67,7 +67,9 @@ def test_audit_json_has_the_keys_that_scripts_rely_on() -> None:
     simulated = {"coverage_min", "coverage_min_at", "coverage_mean", "replicates", "standard_error"}
     assert set(document["methods"][0]["simulated"]) == simulated
     assert set(document["methods"][0]["everywhere"]) == {"minimum_coverage", "minimum_at"}
-    verdict = "status method n sentence prefer steady alternatives closest too_small holds_on balance bounds_at"
+    verdict = (
+        "status method n sentence prefer steady alternatives closest too_small holds_on balance bounds_at precision"
+    )
     assert set(document["verdict"]) == set(verdict.split())
     assert set(document["cross_check"]) == {"cells", "largest_z", "p_value", "chi_square_p"}
     assert set(document["provenance"]) == {"version", "seed", "plan_sha256", "libraries", "created"}
