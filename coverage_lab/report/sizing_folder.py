@@ -39,7 +39,19 @@ COLUMNS: Mapping[str, tuple[str, ...]] = {
 WHOLE = ("n", "events", "critical")
 WORDS = ("method",)
 KEYS = (
-    *("plan", "confidence", "side", "alpha", "standard", "outcome", "targets", "labels", "at_n", "claim_at_n"),
+    *(
+        "plan",
+        "confidence",
+        "side",
+        "alpha",
+        "standard",
+        "outcome",
+        "targets",
+        "labels",
+        "families",
+        "at_n",
+        "claim_at_n",
+    ),
     *("methods", "formula"),
     *("rare", "zero_events", "seen", "decision", "inflated", "verdict", "cautions", "provenance", "horizon"),
 )
@@ -63,7 +75,7 @@ class SavedSizing:
 def sizing_document(sizing: Sizing, provenance: Mapping[str, Any] | None = None) -> dict[str, Any]:
     """The exact content of sample-size.json: what `--json` prints, and what it takes to make the page from it.
 
-    labels: method -> its name for people. at_n: the scan's figures at the recommended n (or the closest one) for the
+    labels, families: of each method. at_n: the scan's figures at the recommended n (or the closest one) for the
     recommended method and plus-or-minus; claim_at_n: the exact test there. targets: what the plan asks for.
     """
     plan = sizing.plan
@@ -80,6 +92,7 @@ def sizing_document(sizing: Sizing, provenance: Mapping[str, Any] | None = None)
         },
         "targets": _targets(plan),
         "labels": {method.name: method.label for method in (*plan.prefer, *plan.methods)},
+        "families": {method.name: method.family for method in (*plan.prefer, *plan.methods)},
         "at_n": _at_n(sizing),
         "claim_at_n": _claim_at_n(sizing),
         "provenance": dict(provenance or _provenance(plan)),

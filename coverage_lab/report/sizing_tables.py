@@ -162,7 +162,7 @@ def exact_test(saved: SavedSizing) -> Table | None:
     known.setdefault(found["n"], found)
     rows = tuple(_tested(found, title, known[n]) for title, n in wanted.items() if n in known)
     heads = ("n", "Claim made at", "Attained size", "Power")
-    return Table("test", "The exact test", (Column("", numeric=False), *map(Column, heads)), rows)
+    return Table("test", "The exact test", (Column("Which n", numeric=False), *map(Column, heads)), rows)
 
 
 def _tested(found: Row, title: str, row: Row) -> tuple[Cell, ...]:

@@ -68,8 +68,12 @@ def as_audit(document: Document) -> dict[str, Any]:
     brief = {"n": 0, "method": verdict["method"], "closest": verdict["best"]}
     brief |= {"prefer": verdict["prefer"], "alternatives": verdict["alternatives"]}
     judged = document["decision"]["by_method"] if document["decision"] else []
+    families = document["families"]
     names = dict.fromkeys(str(row["method"]) for row in (*document["methods"], *judged))
-    rows = [{"method": name, "n": 0, "label": name_of(document, name), "applies": True, "family": ""} for name in names]
+    rows = [
+        {"method": name, "n": 0, "label": name_of(document, name), "applies": True, "family": families.get(name, "")}
+        for name in names
+    ]
     plan = {**document["plan"], "outcome": document["outcome"]}
     return {**document, "plan": plan, "verdict": brief, "by_n": [brief], "methods": rows}
 

@@ -28,7 +28,7 @@ PLANS: Mapping[str, Mapping[str, Any]] = {
         "study": {"population": "welds of one line", "unit": "one weld", "range_basis": "pilot"},
         "outcome": {"expected": 0.03, "range": [0.02, 0.1]},
         "precision": {"half_width": 0.05},
-        "rare": {**RARE, "see_at_least": 1, "at_rate": 0.02},
+        "rare": {**RARE, "see_at_least": 1, "at_rate": 0.01},
         "decision": {"goal": 0.15, "believed": 0.03},
         "sample": {"horizon": 300},
         "design": {"design_effect": 1.5, "cluster_size": 10},

@@ -7,6 +7,7 @@ import math
 import re
 import shutil
 from collections.abc import Callable
+from dataclasses import replace
 from functools import cache
 from itertools import pairwise
 from pathlib import Path
@@ -18,6 +19,7 @@ from report_audits import Tree, finished, page_of
 from sizing_answers import PLANS, answered, planned
 
 from coverage_lab.checks import InputFault
+from coverage_lab.intervals import CATALOGUE
 from coverage_lab.plan import read_plan
 from coverage_lab.records_sizing import rows_of
 from coverage_lab.report import (
@@ -32,7 +34,8 @@ from coverage_lab.report import (
 from coverage_lab.report.sizing_page import PICTURES
 from coverage_lab.report.sizing_tables import targets
 from coverage_lab.report.sizing_view import SECTIONS
-from coverage_lab.report.sizing_words import chance, half, risk
+from coverage_lab.report.sizing_words import as_audit, chance, half, risk
+from coverage_lab.report.style import OWN_FAMILY, looks
 from coverage_lab.report.word_file import installed
 
 Report = Callable[[str], Path]
@@ -125,6 +128,7 @@ def test_images_and_tables_are_described(name: str, sized: Report) -> None:
         assert re.search(r"\d", attributes["alt"])  # a finding, not a name
     assert len(tree.all("table")) == len(tree.all("caption"))
     assert {attributes["scope"] for attributes, _, _ in tree.all("th")} <= {"col", "row"}
+    assert all(words for _, _, words in tree.all("th"))
     for attributes, _, _ in tree.all("div"):
         if attributes.get("role") == "region":
             assert attributes["tabindex"] == "0"
@@ -212,6 +216,12 @@ def test_a_wrong_figure_would_be_noticed() -> None:
     assert unexplained("coverage 12.34 %, 0.5 points, n = 7 and n = 1 008", [1008.0]) == ["12.34", "0.5", "7"]
 
 
+def test_rounding_never_flatters() -> None:
+    assert [chance(value) for value in (0.91799, 0.99999, 0.0)] == ["91.7 %", "over 99.99 %", "0 %"]
+    assert [risk(value) for value in (0.02401, 1e-7, 0.0)] == ["2.5 %", "under 0.01 %", "0 %"]
+    assert [half(value) for value in (0.019961, 0.0123)] == ["2.00 points", "1.23 points"]
+
+
 def test_the_taught_formula_stands_beside_what_it_delivers(sized: Report) -> None:
     formula = answered("precision").formula
     said = said_in(sized("precision"), "verdict")
@@ -245,7 +255,7 @@ def test_every_method_shows_its_first_n_and_the_n_from_which_it_holds(sized: Rep
 def test_a_target_that_was_not_scanned_is_said() -> None:
     answer = answered("precision")
     by = {**answer.by_method, "jeffreys": {**answer.by_method["jeffreys"], "coverage": None}}
-    changed = type(answer)(**{**vars(answer), "by_method": by})
+    changed = replace(answer, by_method=by)
     table = targets(sizing_document(changed))
     (row,) = (row for row in table.rows if row[0].text == "Jeffreys")
     assert [cell.text for cell in row[5:]] == ["not scanned"] * 4
@@ -347,6 +357,14 @@ def test_bounds_speak_of_their_distance(sized: Report) -> None:
     words = page_of(sized("upper")).all("main")[0][2].replace("\u00a0", " ")
     assert "half-width" not in words.replace(answered("upper").verdict.sentence, "").lower()
     assert "Probability that the distance of the bound from the true proportion is at most 10 points" in words
+
+
+def test_a_method_of_the_users_own_is_drawn_in_colour() -> None:
+    answer = answered("precision")
+    mine = replace(CATALOGUE["jeffreys"], family=OWN_FAMILY)
+    others = (method for method in answer.plan.methods if method.name != "jeffreys")
+    changed = replace(answer, plan=replace(answer.plan, methods=(*others, mine)))
+    assert [looks(as_audit(sizing_document(one)))["jeffreys"].emphasised for one in (answer, changed)] == [False, True]
 
 
 def test_each_plan_has_its_cautions(sized: Report) -> None:
