@@ -15,6 +15,7 @@ from coverage_lab.probability import betabinomial, point
 from coverage_lab.records import Array, Counts
 
 LARGEST_JOINT = 400_000  # cells of the joint law's array
+_STEPPED = 250  # units in a cluster up to which the first chance is no smaller than doubles go
 NEVER = 1e-16  # an outcome of one cluster that is less likely does not occur in any simulation
 _KEPT = 512  # laws of one cluster kept in memory
 
@@ -70,7 +71,17 @@ def _true_events(m: int, p: float, icc: float) -> Array:
     if icc == 0 or p in (0.0, 1.0):
         return point(x, m, p)
     strength = (1 - icc) / icc
-    return betabinomial(x, m, p * strength, (1 - p) * strength)
+    a, b = p * strength, (1 - p) * strength
+    if m > _STEPPED:
+        return betabinomial(x, m, a, b)
+    return _stepped(m, a, b) if a <= b else _stepped(m, b, a)[::-1]
+
+
+def _stepped(m: int, a: float, b: float) -> Array:
+    """The beta-binomial law for a <= b from its first chance, a product, by the ratios of neighbours: quick for few."""
+    j = np.arange(m)
+    ratios = (m - j) * (a + j) / ((j + 1) * (b + m - 1 - j))
+    return np.asarray(np.prod((b + j) / (a + b + j)) * np.concatenate([[1.0], np.cumprod(ratios)]))
 
 
 def total_law(laws: Sequence[tuple[Array, int]]) -> tuple[Counts, Array]:

@@ -3,6 +3,7 @@
 from collections.abc import Iterable, Sequence
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from coverage_lab.checks import InputFault
 from coverage_lab.records import Array, Columns, Limits, Method, Side
@@ -61,9 +62,14 @@ def _checked(method: Method, returned: object, columns: Columns, size: int, side
         bad, what = lower > upper, "lower > upper"
     if bad.any():
         at = int(np.argmax(bad))
-        sample = ", ".join(f"{name} = {values[at % len(values)]:g}" for name, values in columns.items())
+        sample = ", ".join(f"{name} = {_shown(values[at % len(values)])}" for name, values in columns.items())
         raise InputFault(f"method {method.name!r}: {what} at {sample}: ({lower[at]:.6g}, {upper[at]:.6g})")
     return lower, upper
+
+
+def _shown(value: ArrayLike) -> str:
+    """One sample's value of a column: a number, or one for every stratum."""
+    return " ".join(f"{number:g}" for number in np.ravel(value))
 
 
 def _described(returned: object) -> str:

@@ -59,7 +59,7 @@ def curve_points(low: float, high: float, design: Design, n: int) -> list[float]
     margin = (high - low) / 4 or min(low, 1 - low) / 2
     ends = max(low - margin, 0.0), min(high + margin, 1.0)
     law = design.law(design.settle((low + high) / 2, n)[0], n)
-    count = CURVE_POINTS if law is None else min(CURVE_POINTS, 2 * grid_size(len(law.weight)))
+    count = search.FEWEST if law is None else min(CURVE_POINTS, 2 * grid_size(len(law.weight)))
     return list(dict.fromkeys(design.settle(float(p), n)[0] for p in np.linspace(*ends, count)))
 
 

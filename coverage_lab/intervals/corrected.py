@@ -126,9 +126,12 @@ CORRECTED_ADJUSTED = Method(
     "J′ = Se′ + Sp′ − 1; P′ + 2z²[P′Se′(1 − Se′)/(m₁ + 2) − (1 − P′)Sp′(1 − Sp′)/(m₀ + 2)] ± z·√[A′(1 − A′)/(n + z²) + "
     "P′²Se′(1 − Se′)/(m₁ + 2) + (1 − P′)²Sp′(1 − Sp′)/(m₀ + 2)]/J′",
     ends="finite; raw limits leave [0, 1]",
-    faults="approximate; [0, 1] where J′ ≤ 0",
+    faults="approximate; not nested in confidence when validation counts are few; [0, 1] where J′ ≤ 0",
     needs=_ESTIMATED,
-    exemptions={"mirror": "events and non-events are not mistaken alike unless the validation counts are equal"},
+    exemptions={
+        "mirror": "events and non-events are not mistaken alike unless the validation counts are equal",
+        "nested": "the centre shifts with z², for few validation counts faster than the reach grows",
+    },
 )
 
 CORRECTED_DELTA = Method(

@@ -151,10 +151,10 @@ def test_one_sided_bounds_of_every_design(side: str) -> None:
         table = measure(plan).methods
         assert (table["missed_below" if side == "lower" else "missed_above"] == 0).all()
         exact = table.set_index("method")["minimum_coverage"]
-        kept = {"finite": "hypergeometric-exact", "clustered": "corrected-clopper-pearson-deff-planned"}.get(
-            design.kind
-        )
-        assert kept is None or exact[kept] > 0.93
+        if design.kind == "finite":
+            assert exact["hypergeometric-exact"] >= 0.95
+        if design.kind == "clustered":
+            assert exact["corrected-clopper-pearson-deff-planned"] > 0.93
 
 
 def test_workers_change_no_digit_of_clusters() -> None:

@@ -8,9 +8,12 @@ import numpy as np
 import pytest
 from design_cases import STRATA
 
+from coverage_lab.checks import InputFault
 from coverage_lab.designs import Classification, Layered, Stratified, Stratum
 from coverage_lab.designs.simple import Simple
+from coverage_lab.engine.bounds import evaluate
 from coverage_lab.probability import point
+from coverage_lab.records import Method
 
 DESIGN = Stratified(STRATA)
 
@@ -58,7 +61,7 @@ def test_the_law_is_the_product_of_the_strata() -> None:
 def test_totals_are_the_sum_of_the_strata() -> None:
     law = DESIGN.law(0.2, 100)
     totals = DESIGN.view(frozenset({"events", "trials"})).law(0.2, 100)
-    summed = np.bincount(law.columns["events"], law.weight)
+    summed = np.bincount(law.columns["events"], law.weight, minlength=101)
     assert np.allclose(summed[totals.columns["events"]], totals.weight, rtol=1e-9, atol=1e-15)
 
 
@@ -75,3 +78,12 @@ def test_a_product_that_is_too_long_is_not_listed() -> None:
     assert many.law(0.3, 2000) is None
     assert many.view(frozenset({"events", "trials"})).law(0.3, 2000) is not None
     assert Simple().law(0.3, 2000) is not None
+
+
+def test_a_method_that_is_wrong_for_strata_is_told_the_sample() -> None:
+    wrong = Method(
+        "wrong", lambda x, tail: (x[:, 0] * np.nan, x[:, 0]), "wrong", "none", "a test", needs=("stratum_events",)
+    )
+    columns = {"stratum_events": np.array([[1, 0, 2]]), "events": np.array([3]), "trials": np.array([9])}
+    with pytest.raises(InputFault, match=r"NaN at stratum_events = 1 0 2, events = 3, trials = 9"):
+        evaluate(wrong, columns, "two-sided", 0.025)
