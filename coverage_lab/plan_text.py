@@ -24,7 +24,8 @@ def plan_digest(document: Mapping[str, Any]) -> str:
 def _table(table: Mapping[str, Any], path: tuple[str, ...]) -> Iterator[str]:
     """The lines of a table: its own values first, then the tables inside it, as TOML asks."""
     inner = {key: value for key, value in table.items() if isinstance(value, Mapping)}
-    own = {key: value for key, value in table.items() if key not in inner}
+    lists = {key: value for key, value in table.items() if _of_tables(value)}
+    own = {key: value for key, value in table.items() if key not in inner and key not in lists}
     if path and (own or not inner):
         yield ""
         yield f"[{'.'.join(_key(name) for name in path)}]"
@@ -32,6 +33,16 @@ def _table(table: Mapping[str, Any], path: tuple[str, ...]) -> Iterator[str]:
         yield f"{_key(key)} = {_value(value)}"
     for key, value in inner.items():
         yield from _table(value, (*path, key))
+    for key, value in lists.items():
+        for item in value:
+            yield ""
+            yield f"[[{'.'.join(_key(name) for name in (*path, key))}]]"
+            yield from (f"{_key(name)} = {_value(content)}" for name, content in item.items())
+
+
+def _of_tables(value: object) -> bool:
+    """Whether the value is a list of tables."""
+    return isinstance(value, list) and bool(value) and all(isinstance(item, Mapping) for item in value)
 
 
 def _key(name: str) -> str:

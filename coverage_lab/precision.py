@@ -21,11 +21,21 @@ def with_precision(plan: Plan, verdict: Verdict) -> Verdict:
 
     Unchanged without a target, without a method, and for designs whose widths cannot be sized.
     """
-    if plan.precision is None or verdict.method is None or plan.design.kind != "simple":
+    if plan.precision is None or verdict.method is None or not _sized(plan):
         return verdict
     found = measured(plan, plan.precision, verdict.method, verdict.n)
     missed = "" if found["meets"] else f" {_missed(plan, plan.precision, found)}"
     return replace(verdict, precision=found, sentence=verdict.sentence + missed)
+
+
+def _sized(plan: Plan) -> bool:
+    """Whether the plan's samples are simple ones, seen as they are."""
+    return plan.design.kind == "simple" and plan.design.columns == ("events", "trials") and len(_parts(plan)) == 1
+
+
+def _parts(plan: Plan) -> tuple[object, ...]:
+    """The parts of the smallest planned sample."""
+    return plan.design.parts(min(plan.sizes)) or ()
 
 
 def measured(plan: Plan, precision: Precision, method: str, n: int) -> Mapping[str, Any]:

@@ -23,14 +23,22 @@ def method_of(plan: Plan, name: str) -> Method:
     return next(method for method in plan.methods if method.name == name)
 
 
+def of_counts(plan: Plan, name: str) -> bool:
+    """Whether the method needs no more than events and trials."""
+    return set(method_of(plan, name).needs) <= {"events", "trials"}
+
+
 def limits_at(plan: Plan, method: Method, n: int, events: list[int]) -> Limits:
     """The method's limits for a few events counts at n."""
     return evaluate(method, {"events": np.array(events), "trials": np.array([n])}, plan.side, plan.tail)
 
 
 def bounds_at(plan: Plan, n: int, name: str) -> tuple[Mapping[str, Any], ...]:
-    """For one-sided plans the bound at 0, 1, 2 events, or at n, n-1, n-2 for a lower one."""
-    if plan.side == "two-sided":
+    """For one-sided plans the bound at 0, 1, 2 events, or at n, n-1, n-2 for a lower one.
+
+    None for methods that need more than events and trials.
+    """
+    if plan.side == "two-sided" or not of_counts(plan, name):
         return ()
     events = [k if plan.side == "upper" else n - k for k in range(min(3, n + 1))]
     limits = limits_at(plan, method_of(plan, name), n, events)
@@ -44,6 +52,8 @@ def too_small(plan: Plan, n: int, name: str) -> Mapping[str, Any] | None:
     The outcome is 0 events, or n events for a range nearer to 1.
     """
     method = method_of(plan, name)
+    if not of_counts(plan, name):
+        return None
     near_one = plan.side == "lower" or (plan.side == "two-sided" and plan.outcome.low + plan.outcome.high > 1)
 
     def extreme(size: int) -> float:

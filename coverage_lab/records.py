@@ -127,6 +127,9 @@ class Design(Protocol):
     def points(self, low: float, high: float, n: int) -> Array | None:
         """The finite set of reachable truths in [low, high], or None when every p is reachable."""
 
+    def faults(self, n: int) -> tuple[str, ...]:
+        """Why it cannot be drawn at size n, one line each."""
+
     def view(self, needs: frozenset[str]) -> Design:
         """The same design for methods that need no more than these columns: it may know more about fewer columns."""
 

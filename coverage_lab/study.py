@@ -14,12 +14,12 @@ import pandas as pd
 from coverage_lab import reach, report, verdict
 from coverage_lab.cautions import cautions
 from coverage_lab.checks import InputFault, expected, unknown
-from coverage_lab.designs import Simple
+from coverage_lab.designs import Layered, Loss, Simple
 from coverage_lab.engine.audit import measure, saw
 from coverage_lab.engine.bounds import evaluate, inapplicable
 from coverage_lab.engine.exact import listed, minimum_of, possible
 from coverage_lab.engine.work import Progress
-from coverage_lab.intervals import CATALOGUE
+from coverage_lab.intervals import EVERY
 from coverage_lab.plan import audit_faults, own_methods
 from coverage_lab.plan_text import plan_digest
 from coverage_lab.precision import with_precision
@@ -120,6 +120,7 @@ def sample_size(
         InputFault: targets that cannot be answered, one line each.
         KeyboardInterrupt: on Ctrl-C, with what was finished.
     """
+    plan = _as_sized(plan)
     return size(_with_own(plan, extra), _made_up_for(plan), workers=workers, progress=progress)
 
 
@@ -130,11 +131,32 @@ def _with_own(plan: Plan, extra: Mapping[str, Callable[..., Bounds]] | None) -> 
     return replace(plan, methods=(*plan.methods, *added))
 
 
+def _as_sized(plan: Plan) -> Plan:
+    """The plan with the frame of its design: n counts evaluable units, and the ladder makes up for what is lost.
+
+    Raises:
+        InputFault: a test that errs, or losses that the ladder does not know.
+    """
+    design = plan.design
+    if not isinstance(design, Layered):
+        return plan
+    alike = all(
+        isinstance(layer, Loss) and layer.rate_events == layer.rate_others and layer.treat_as == "excluded"
+        for layer in design.layers
+    )
+    if not alike:
+        what = "no test that errs, and losses with one rate that are excluded: no other design is sized so far"
+        raise InputFault(f"[design]: expected {what}")
+    return replace(plan, design=design.frame)
+
+
 def _made_up_for(plan: Plan) -> Inflation:
     """What the plan's design says that the sample has to make up for."""
     design = plan.document["design"]
     loss = design.get("loss", {}).get("rate", 0.0)
-    return Inflation(design.get("design_effect", 1.0), design.get("population"), loss, design.get("cluster_size"))
+    clusters = design.get("cluster_size")
+    clusters = None if isinstance(clusters, list) else clusters
+    return Inflation(design.get("design_effect", 1.0), design.get("population"), loss, clusters)
 
 
 def interval_table(plan: Plan, decided: Verdict) -> pd.DataFrame:
@@ -244,8 +266,8 @@ def minimum_coverage(
 def _question_faults(method: str, confidence: float, side: str) -> list[str]:
     """Faults that every quick question can have."""
     faults = []
-    if method not in CATALOGUE:
-        faults.append(unknown("method", str(method), CATALOGUE))
+    if method not in EVERY:
+        faults.append(unknown("method", str(method), EVERY))
     if not 0 < confidence < 1:
         faults.append(expected("a number strictly between 0 and 1", confidence, "confidence"))
     if side not in SIDES:
@@ -255,7 +277,7 @@ def _question_faults(method: str, confidence: float, side: str) -> list[str]:
 
 def _applicable(name: str, n: int, side: Side) -> Method:
     """The catalogue's method, or a fault with the reason why it cannot answer."""
-    method = CATALOGUE[name]
+    method = EVERY[name]
     reason = inapplicable(method, ("events", "trials"), n, side)
     if reason is not None:
         raise InputFault(f"method {name!r} does not apply: {reason}")

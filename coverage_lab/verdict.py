@@ -5,6 +5,7 @@ Only a method of the plan's preference list can be named, and only when it meets
 with n.
 """
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, Literal
@@ -18,6 +19,8 @@ from coverage_lab.rounding import percent, whole
 WIDER = 1.05  # a method gives way to a later one on the list that is this much narrower on average
 SIMULATION_MARGIN = 3.0  # standard errors a simulated figure must clear to pass or to fail
 ROUNDING = 2.3e-16  # a limit near 1 is off by this much, and coverage moves at most n times as fast as p
+MOST_REPLICATES = 100_000_000  # more than these nobody waits for
+NEEDS_DRAWS = "samples of this design cannot be listed, so that the simulated route is needed"
 LOPSIDED = 1.25  # times the tail: beyond this, misses on one side are said to dominate
 
 
@@ -49,6 +52,8 @@ def judge(plan: Plan, row: Row) -> Judgement:
     """One row of the methods table against the standard; simulated figures decide only beyond 3 standard errors."""
     if not row["applies"]:
         return Judgement(None, str(row["reason"]))
+    if row["worst_miss"] != row["worst_miss"]:
+        return Judgement(None, f"not computed; {NEEDS_DRAWS}")
     worst, mean = thresholds(plan)
     exact = row["minimum_is"] != "simulated"
     margin = 0.0 if exact else SIMULATION_MARGIN * row["simulated_standard_error"]
@@ -61,7 +66,18 @@ def judge(plan: Plan, row: Row) -> Judgement:
         return Judgement(True, figures)
     if excess > margin:
         return Judgement(False, figures)
-    return Judgement(None, f"{figures}: within 3 Monte Carlo standard errors of the limit; more draws are needed")
+    return Judgement(
+        None, f"{figures}: within 3 Monte Carlo standard errors of the limit; {_what_it_takes(row, excess, margin)}"
+    )
+
+
+def _what_it_takes(row: Row, excess: float, margin: float) -> str:
+    """How many replicates would decide, if the figure stayed where it is: errors shrink with their square root."""
+    share = (margin / abs(excess)) ** 2 if excess else math.inf
+    needed = row["simulated_replicates"] * share
+    if needed > MOST_REPLICATES:
+        return f"even {whole(MOST_REPLICATES)} replicates would hardly decide"
+    return f"about {whole(math.ceil(needed / 1000) * 1000)} replicates would decide if the figures stayed"
 
 
 def rows_of(frame: pd.DataFrame) -> list[Row]:
@@ -201,11 +217,21 @@ def _why_named(plan: Plan, here: Mapping[str, Row], listed: Sequence[str], holdi
     """The recommendation in words, from the record that decided it."""
     row = here[named]
     return (
-        f"At n = {whole(row['n'])}, report the {row['label']} {_form(plan)}: its interval coverage is at least "
-        f"{percent(row['minimum_coverage'], 'down')} everywhere in the planned range and "
+        f"At n = {whole(row['n'])}, report the {row['label']} {_form(plan)}: its interval coverage is "
+        f"{_lowest(row)} and "
         f"{percent(row['mean_coverage'], 'down')} on average; the standard asks {_standard(plan)}; "
         f"{_place(here, listed, holding, named)}."
     )
+
+
+def _lowest(row: Row) -> str:
+    """The lowest coverage, claimed no further than it was looked for."""
+    coverage = percent(row["minimum_coverage"], "down")
+    if row["minimum_is"] == "certified":
+        return f"at least {coverage} everywhere in the planned range"
+    if row["minimum_is"] == "searched":
+        return f"{coverage} at the lowest point that a search of the planned range found (not proven)"
+    return f"{coverage} at the lowest of the simulated proportions"
 
 
 def _place(here: Mapping[str, Row], listed: Sequence[str], holding: Sequence[str], named: str) -> str:
@@ -224,11 +250,11 @@ def _why_not(plan: Plan, n: int, here: Mapping[str, Row], listed: Sequence[str],
     """Why nothing is named, in words."""
     stated = f"stated list ({_labels(here, listed)})"
     if status == "undecided":
-        return (
-            f"Undecided at n = {whole(n)}: simulated figures of the {stated} lie within 3 Monte Carlo standard errors "
-            f"of the standard, {_standard(plan)}; more replicates are needed."
-        )
-    return f"No method on the {stated} meets the standard at n = {whole(n)} and its neighbours: {_standard(plan)}."
+        lie = f"simulated figures of the {stated} lie within 3 Monte Carlo standard errors"
+        takes = next(here[name]["why"].rpartition("; ")[2] for name in listed if here[name]["passes"] is None)
+        return f"Undecided at n = {whole(n)}: {lie} of the standard, {_standard(plan)}; {takes}."
+    beside = " and its neighbours" if all(here[name]["minimum_is"] == "certified" for name in listed) else ""
+    return f"No method on the {stated} meets the standard at n = {whole(n)}{beside}: {_standard(plan)}."
 
 
 def _standard(plan: Plan) -> str:

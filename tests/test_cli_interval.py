@@ -7,7 +7,9 @@ import pytest
 from click.testing import CliRunner, Result
 
 from coverage_lab.cli import cli
-from coverage_lab.intervals import CATALOGUE
+from coverage_lab.intervals import CATALOGUE, EVERY
+
+KNOWN = "events, trials, cluster, stratum, weight"
 
 
 @pytest.fixture(autouse=True)
@@ -139,7 +141,7 @@ WHOLE = "expected a whole number of at least 0"
                 "EVENTS 6: expected at most the 5 of TRIALS",
                 "--confidence 95: expected a number strictly between 0 and 1 (95 % is written 0.95)",
                 "--side up: expected two-sided, upper or lower",
-                f"unknown method 'zz': must be one of {', '.join(CATALOGUE)}",
+                f"unknown method 'zz': must be one of {', '.join(EVERY)}",
                 "nowhere: expected the report folder of an audit, with its audit.json (format 'coverage-lab/audit/1')",
             ],
         ),
@@ -177,11 +179,11 @@ def test_rows_are_added_up(text: str) -> None:
     ("text", "lines"),
     [
         ("", ["data.csv:1: headings = '': expected the columns events and trials, each once"]),
-        ("7,250\n", [f"data.csv:1: unknown column '{name}': must be one of events, trials" for name in (7, 250)]),
+        ("7,250\n", [f"data.csv:1: unknown column '{name}': must be one of {KNOWN}" for name in (7, 250)]),
         ("event,trials\n7,9\n", ["""data.csv:1: unknown column 'event': did you mean "events"?"""]),
         (
             "events,trials,cluster\n7,9,a\n",
-            ["data.csv:1: column 'cluster': expected a simple random sample, with the columns events and trials only"],
+            ["data.csv: clusters = 1: expected at least 2 clusters with trials"],
         ),
         ("events,trials\n7,9\n9,7\n", ["data.csv:3: row = '9,7': expected whole numbers, 0 <= events <= trials"]),
         (

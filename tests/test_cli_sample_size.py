@@ -442,7 +442,7 @@ def test_options_reach_the_work(monkeypatch: pytest.MonkeyPatch) -> None:
         "population": 6200,
         "design_effect": 1.5,
         "cluster_size": 5,
-        "loss": {"rate": 0.05},
+        "loss": {"rate": 0.05, "treat_as": "excluded"},
     }
     assert (plan.sizes, plan.simulation.replicates, plan.simulation.seed, plan.side) == ((30, 40), 10, 3, "upper")
     assert (seen["workers"], seen["progress"]) == (2, None), "progress goes to a terminal only"

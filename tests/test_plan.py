@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 
 from coverage_lab.checks import InputFault
 from coverage_lab.designs import Simple
-from coverage_lab.intervals import CATALOGUE
+from coverage_lab.intervals import CATALOGUE, EVERY
 from coverage_lab.plan import DEMONSTRATION, STARTER, available, make_level, make_plan, own_methods, read_plan
 from coverage_lab.plan_text import plan_digest, plan_text
 from coverage_lab.records import Plan
@@ -169,7 +169,7 @@ def test_methods_of_installed_packages_are_found(tmp_path: Path, monkeypatch: py
     install(tmp_path, "house-rule = house_rules:rule")
     monkeypatch.syspath_prepend(tmp_path)
     assert names(make_plan(LEAST).methods) == [*CATALOGUE, "house-rule"]
-    assert list(available()) == [*CATALOGUE, "house-rule"]
+    assert list(available()) == [*EVERY, "house-rule"]
 
 
 def test_a_broken_installed_method_is_one_line(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
@@ -247,6 +247,14 @@ def switched_on(lines: list[str], line: str) -> list[str]:
         **dict.fromkeys(("events", "hoped_for"), ("limit",)),
         **dict.fromkeys(("see_at_least", "at_rate", "with_probability"), ("see_at_least", "at_rate")),
         **dict.fromkeys(("goal", "believed", "alpha", "power"), ("goal", "believed")),
+        **dict.fromkeys(("cluster_cv", "icc"), ("cluster_size", "icc")),
+        **dict.fromkeys(("name", "weight", "n", "odds_ratio"), ("name", "weight", "n")),
+        **dict.fromkeys(("sensitivity", "specificity"), ("sensitivity", "specificity")),
+        **dict.fromkeys(
+            ("diseased_tested", "healthy_tested"),
+            ("sensitivity", "specificity", "diseased_tested", "healthy_tested"),
+        ),
+        "treat_as": ("rate",),
     }.get(key, ())
     own = lines.index(f"# {line}")
     header = max((k for k in range(own) if lines[k].removeprefix("# ").startswith("[")), default=0)
@@ -256,6 +264,11 @@ def switched_on(lines: list[str], line: str) -> list[str]:
         else other
         for k, other in enumerate(lines)
     ]
+    kinds = dict.fromkeys(("cluster_cv", "icc"), "clustered")
+    kinds |= dict.fromkeys(("name", "weight", "n", "odds_ratio"), "stratified")
+    if key in kinds:
+        found = [f'kind = "{kinds[key]}"' if other.startswith('kind = "simple"') else other for other in found]
+        found = ["weight = 1.0" if other.startswith("weight = ") else other for other in found]
     if key == "candidates":
         found = [other for other in found if not other.startswith("n = ")]
     if key in ("worst_miss", "mean_miss"):

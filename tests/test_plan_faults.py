@@ -5,7 +5,7 @@ from pathlib import Path
 import pytest
 
 from coverage_lab.checks import InputFault
-from coverage_lab.intervals import CATALOGUE
+from coverage_lab.intervals import EVERY
 from coverage_lab.plan import make_plan, read_plan
 
 GOOD = """\
@@ -45,8 +45,8 @@ CHANGES = [
     ("[simulation]", "[precison]\n[simulation]", """:13: unknown key 'precison': did you mean "precision"?"""),
     (
         "[simulation]",
-        "[design]\nicc = 0.1\n[simulation]",
-        ":14: [design]: unknown key 'icc': must be one of kind, population, design_effect, cluster_size, loss",
+        "[design]\niccc = 0.1\n[simulation]",
+        """:14: [design]: unknown key 'iccc': did you mean "icc"?""",
     ),
     # wrong types
     ('"A study"', "12", ":1: title = 12: expected one line of text"),
@@ -149,8 +149,8 @@ CHANGES = [
     ),
     (
         "[sample]",
-        "[design]\nkind = 'finite'\n[sample]",
-        ":11: [design] kind: unknown design 'finite': must be one of simple",
+        "[design]\nkind = 'infinite'\n[sample]",
+        """:11: [design] kind: unknown design 'infinite': did you mean "finite"?""",
     ),
     ("[sample]", "[design]\nkind = 3\n[sample]", ":11: [design] kind = 3: expected the name of a design"),
     (
@@ -196,7 +196,7 @@ CHANGES = [
     (
         "1000",
         "1000\n[methods]\nprefer = ['zzz']",
-        f":16: [methods] prefer: unknown method 'zzz': must be one of {', '.join(CATALOGUE)}",
+        f":16: [methods] prefer: unknown method 'zzz': must be one of {', '.join(EVERY)}",
     ),
     (
         "1000",
@@ -271,8 +271,8 @@ range = [0.05, 0.005]
 [sample]
 n = 12.5
 [design]
-kind = "finite"
-icc = 0.1
+kind = "infinite"
+iccc = 0.1
 [simulation]
 replicates = -1
 grid = [0.1,
@@ -288,8 +288,8 @@ prefer = ["blakr"]
         ":3: unknown key 'n': it belongs in [sample]",
         f":5: [outcome] range = [0.05, 0.005]: {RANGE}",
         f":7: [sample] n = 12.5: {SIZE}",
-        ":9: [design] kind: unknown design 'finite': must be one of simple",
-        ":10: [design]: unknown key 'icc': must be one of kind, population, design_effect, cluster_size, loss",
+        """:9: [design] kind: unknown design 'infinite': did you mean "finite"?""",
+        """:10: [design]: unknown key 'iccc': did you mean "icc"?""",
         f":12: [simulation] replicates = -1: {REPLICATES}",
         ":13: [simulation] grid, item 2 = nan: expected a proportion within the planned range",
         ":16: [methods] only, item 2 = 4: expected the name of a method",

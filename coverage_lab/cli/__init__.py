@@ -5,6 +5,7 @@ import sys
 import click
 
 from coverage_lab.cli.audit import audit
+from coverage_lab.cli.designs import designs
 from coverage_lab.cli.door import Door
 from coverage_lab.cli.interval import interval
 from coverage_lab.cli.methods import methods
@@ -38,7 +39,7 @@ def cli() -> None:
     """
 
 
-for command in (audit, sample_size, interval, methods, plan, page):
+for command in (audit, sample_size, interval, methods, designs, plan, page):
     cli.add_command(command)
 
 

@@ -3,17 +3,19 @@
 import csv
 from collections.abc import Iterator
 from pathlib import Path
+from typing import Any
 
 from coverage_lab.checks import InputFault, expected, unknown
+from coverage_lab.cli.designed import columns_of_rows
 from coverage_lab.plan import LARGEST_N, of_option
 
 COLUMNS = ("events", "trials")
-OTHER_DESIGNS = ("cluster", "stratum", "weight")
+OF_DESIGNS = ("cluster", "stratum", "weight")
 MOST_FAULTS = 20  # of one file; the rest is counted
 
 
-def read_counts(events: object, trials: object, data: Path | None) -> tuple[int, int]:
-    """Events and trials, as typed or from a file.
+def read_counts(events: object, trials: object, data: Path | None) -> tuple[int, int, dict[str, Any]]:
+    """Events and trials, as typed or from a file, and the columns that a file's clusters or strata give.
 
     Raises:
         InputFault: neither or both, or counts that are not whole numbers with 0 <= events <= trials.
@@ -25,7 +27,7 @@ def read_counts(events: object, trials: object, data: Path | None) -> tuple[int,
         return from_csv(data)
     if len(typed) < 2:
         raise InputFault("expected EVENTS and TRIALS, two whole numbers, or --data FILE.csv")
-    return _sound(events, trials)
+    return (*_sound(events, trials), {})
 
 
 def _sound(events: object, trials: object) -> tuple[int, int]:
@@ -42,8 +44,8 @@ def _sound(events: object, trials: object) -> tuple[int, int]:
     raise InputFault(*faults)
 
 
-def from_csv(path: Path) -> tuple[int, int]:
-    """The sums of the columns events and trials: the rows are one simple random sample.
+def from_csv(path: Path) -> tuple[int, int, dict[str, Any]]:
+    """The sums of the columns events and trials, and what columns for clusters or strata add.
 
     Raises:
         InputFault: unreadable, other columns, or rows that are not whole numbers with events <= trials; with lines.
@@ -62,7 +64,8 @@ def from_csv(path: Path) -> tuple[int, int]:
     events, trials = (sum(pair[k] for _, _, pair in pairs if pair is not None) for k in range(2))
     if not 1 <= trials <= LARGEST_N:
         raise InputFault(f"{path}: {expected(f'a whole number from 1 to {LARGEST_N}', trials, 'the sum of trials')}")
-    return events, trials
+    named = [dict(zip(headings[1], row, strict=True)) for _, row, pair in pairs if pair is not None]
+    return events, trials, columns_of_rows(path, named)
 
 
 def _rows(path: Path) -> list[tuple[int, list[str]]]:
@@ -81,13 +84,11 @@ def _rows(path: Path) -> list[tuple[int, list[str]]]:
 
 
 def _heading_faults(path: Path, headings: list[str]) -> Iterator[str]:
-    """Columns that are missing, unknown, or of designs that are not analysed here."""
+    """Columns that are missing, unknown, or given twice."""
     for name in headings:
-        if name in OTHER_DESIGNS:
-            yield f"{path}:1: column {name!r}: expected a simple random sample, with the columns events and trials only"
-        elif name not in COLUMNS:
-            yield f"{path}:1: {unknown('column', name, COLUMNS)}"
-    if any(headings.count(name) != 1 for name in COLUMNS):
+        if name not in (*COLUMNS, *OF_DESIGNS):
+            yield f"{path}:1: {unknown('column', name, (*COLUMNS, *OF_DESIGNS))}"
+    if any(headings.count(name) != 1 for name in COLUMNS) or any(headings.count(name) > 1 for name in OF_DESIGNS):
         yield f"{path}:1: {expected('the columns events and trials, each once', ','.join(headings), 'headings')}"
 
 

@@ -29,6 +29,7 @@ class Question(NamedTuple):
     side: "Side"
     methods: "list[Method]"  # in the order of the answer
     planned: "Planned | None"
+    columns: dict[str, Any]  # what the design gives beside events and trials
 
 
 class Answer(NamedTuple):
@@ -60,6 +61,7 @@ Examples:
   coverage-lab interval 0 60 --side upper
   coverage-lab interval 7 250 --from plan-report
   coverage-lab interval --data counts.csv --json
+  coverage-lab interval 7 250 --population 6200 --sensitivity 0.95 --specificity 0.99
 """
 
 
@@ -67,7 +69,10 @@ Examples:
 @click.argument("events", type=options.number, required=False)
 @click.argument("trials", type=options.number, required=False)
 @click.option(
-    "--data", type=click.Path(path_type=Path), metavar="FILE.csv", help="Columns events and trials, added up."
+    "--data",
+    type=click.Path(path_type=Path),
+    metavar="FILE.csv",
+    help="Columns events and trials, and if needed cluster, or stratum and weight.",
 )
 @click.option(
     "--from",
@@ -76,6 +81,13 @@ Examples:
     metavar="FOLDER",
     help="An audit's report folder: its method first, at its confidence and side; the rest for comparison only.",
 )
+@click.option(
+    "--population", type=options.number, metavar="N", help="Units in all, where the sample is a part of them."
+)
+@click.option(
+    "--sensitivity", metavar="S", help="Of the test behind the events: a number, or COUNT/TESTED if estimated."
+)
+@click.option("--specificity", metavar="S", help="Likewise.")
 @click.option("--method", multiple=True, metavar="NAME", help="Only this method; may be repeated. [default: all]")
 @options.confidence
 @options.side
@@ -100,23 +112,30 @@ def interval(as_json: bool, quiet: bool, **asked: object) -> None:
 def _question(asked: Mapping[str, Any]) -> Question:
     """Everything that was typed, checked together."""
     from coverage_lab.cli.counts import read_counts
+    from coverage_lab.cli.designed import columns_of_options
     from coverage_lab.cli.planned import departures, read_planned
-    from coverage_lab.plan import make_level
+    from coverage_lab.plan import make_level, of_option
 
-    (events, trials), (confidence, side), (named, known), planned = options.together(
+    (events, trials, own), (confidence, side), (named, known), planned, added = options.together(
         lambda: read_counts(asked["events"], asked["trials"], asked["data"]),
         lambda: make_level({"confidence": asked["confidence"], "side": asked["side"]}),
         lambda: _named(asked["method"]),
         lambda: None if asked["folder"] is None else read_planned(asked["folder"]),
+        lambda: columns_of_options(asked["population"], asked["sensitivity"], asked["specificity"]),
     )
+    if "population" in added and added["population"][0] < trials:
+        raise InputFault(of_option("--population", asked["population"], f"at least the {trials} trials"))
+    columns = {**own, **added}
+    given = {"events", "trials", *columns}
+    answering = [method for method in known.values() if set(method.needs) <= given]
     if planned is None:
-        return Question(events, trials, confidence, side, named or list(known.values()), None)
+        return Question(events, trials, confidence, side, named or answering, None, columns)
     faults = departures(planned, known, asked["confidence"], asked["side"])
     if faults:
         raise InputFault(*faults)
     first = known[planned.method]
-    rest = [other for other in named or known.values() if other is not first]
-    return Question(events, trials, planned.confidence, planned.side, [first, *rest], planned)
+    rest = [other for other in named or answering if other is not first]
+    return Question(events, trials, planned.confidence, planned.side, [first, *rest], planned, columns)
 
 
 def _named(names: Sequence[str]) -> "tuple[list[Method], dict[str, Method]]":
@@ -145,7 +164,7 @@ def _answers(question: Question) -> tuple[list[Answer], list[str]]:
     from coverage_lab.engine.bounds import evaluate, inapplicable
     from coverage_lab.records import tail_of
 
-    columns = {"events": np.array([question.events]), "trials": np.array([question.trials])}
+    columns = {"events": np.array([question.events]), "trials": np.array([question.trials]), **question.columns}
     tail = tail_of(question.confidence, question.side)
     answers, left_out = [], []
     for method in question.methods:

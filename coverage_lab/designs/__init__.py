@@ -101,8 +101,8 @@ EVERY: dict[str, Entry] = {
     ),
 }
 
-# What a plan can name so far.
-CATALOGUE: dict[str, Entry] = {"simple": EVERY["simple"]}
+# What a plan can name.
+CATALOGUE: dict[str, Entry] = EVERY
 
 LAYERS: dict[str, LayerEntry] = {
     "classification": LayerEntry(

@@ -106,6 +106,8 @@ def _beside(plan: Plan, planned: int, reach: int, names: Set[str]) -> list[dict[
     over = Range(plan.outcome.low, plan.outcome.high, plan.outcome.prior)
     rows: list[dict[str, object]] = []
     for n in range(max(1, planned - reach), planned + reach + 1):
+        if n != planned and plan.design.faults(n):
+            continue
         for seen, group in views(plan, applying(plan, n)):
             parts = size.manageable(seen.design, n, over.low, over.high)
             quick = len(parts) == 1  # a mixture takes its time: only who may be named, and only nearby

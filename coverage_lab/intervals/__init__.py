@@ -115,7 +115,7 @@ _BY_DESIGN: tuple[Method, ...] = (
     *corrected.corrected_all((*_OF_CLUSTERS, *_OF_STRATA)),
 )
 
-# What a plan can name so far: methods of events and trials alone.
+# Methods of events and trials alone.
 CATALOGUE: dict[str, Method] = {method.name: method for method in _BY_STANDING}
 # Those that need to know the design too, in the order of their standing within each design.
 DESIGN_AWARE: dict[str, Method] = {method.name: method for method in _BY_DESIGN}

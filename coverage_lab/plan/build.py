@@ -9,6 +9,7 @@ from scipy.special import betainc
 from coverage_lab import designs
 from coverage_lab.checks import InputFault, expected, unknown
 from coverage_lab.plan.check import Checked, check, check_head
+from coverage_lab.plan.design import Design, design_faults, design_of, sound_design
 from coverage_lab.plan.faults import Fault, Source
 from coverage_lab.plan.lines import KeyPath, lines_of
 from coverage_lab.plan.needs import between_targets, for_any, for_audit
@@ -26,7 +27,6 @@ from coverage_lab.plan.parts import (
 )
 from coverage_lab.plan.reading import parsed, plain
 from coverage_lab.plan.schema import (
-    DesignTable,
     Head,
     MethodsTable,
     OutcomeTable,
@@ -117,12 +117,13 @@ def _plan(document: Mapping[str, Any], source: Source, title: str, extra: Extra 
 
 def _beyond_schema(document: Mapping[str, Any], checked: Checked, known: Mapping[str, Method]) -> Iterator[Fault]:
     """Faults that need the catalogues, or two tables at once; each looked for when what it needs is sound."""
-    head, design, outcome = checked.find(Head), checked.find(DesignTable), checked.find(OutcomeTable)
-    if design is not None and design.kind not in designs.CATALOGUE:
-        yield Fault(("design", "kind"), unknown("design", design.kind, designs.CATALOGUE), where="[design] kind")
+    head, design, outcome = checked.find(Head), sound_design(checked), checked.find(OutcomeTable)
+    yield from design_faults(checked)
     for key in ("only", "prefer"):
         names = _items(document, "methods", key)
         yield from _method_faults(key, names, None if head is None else head.side, known)
+    if design is not None:
+        yield from _unanswered(document, design, known)
     yield from _unreachable(_items(document, "methods", "only"), checked.find(SampleTable), known)
     yield from _vacuous(checked.find(StandardTable), head)
     yield from between_targets(checked)
@@ -152,6 +153,23 @@ def _method_faults(key: str, names: list[Any], side: Side | None, known: Mapping
         elif side is not None and side not in known[name].sides:
             can = " or ".join(known[name].sides)
             yield Fault(("methods", key, k), f'a method for side = "{side}"; this one is for {can} only', name)
+
+
+def _unanswered(document: Mapping[str, Any], design: Design, known: Mapping[str, Method]) -> Iterator[Fault]:
+    """Methods that may be named and need what the design does not give; or not one to be measured that does not."""
+    only = [name for name in _items(document, "methods", "only") if isinstance(name, str) and name in known]
+    if only and not any(_answers(known[name], design) for name in only):
+        yield Fault(("methods", "only"), "a method that can be computed from what this design gives", only)
+    for k, name in enumerate(_items(document, "methods", "prefer")):
+        if isinstance(name, str) and name in known and not _answers(known[name], design):
+            missing = ", ".join(column for column in known[name].needs if column not in design.columns)
+            what = f"a method for this design, which does not give {missing}"
+            yield Fault(("methods", "prefer", k), what, name)
+
+
+def _answers(method: Method, design: Design) -> bool:
+    """Whether the design gives what the method needs."""
+    return all(column in design.columns for column in method.needs)
 
 
 def _unreachable(only: list[Any], sample: SampleTable | None, known: Mapping[str, Method]) -> Iterator[Fault]:
@@ -199,9 +217,9 @@ def _built(checked: Checked, known: Mapping[str, Method], title: str) -> Plan:
     head, asked = checked.get(Head), checked.get(MethodsTable)
     outcome, sample = outcome_of(checked), checked.get(SampleTable)
     simulation = simulation_of(checked, outcome)
-    entry = designs.CATALOGUE[checked.get(DesignTable).kind]
-    only = asked.only or list(known)
-    prefer = [name for name in asked.prefer or entry.prefer(head.side) if name in only] or only
+    design = design_of(checked)
+    only = asked.only or [name for name, method in known.items() if _answers(method, design)]
+    prefer = [name for name in asked.prefer or designs.preferred(design, head.side) if name in only] or only
     rare, decision = rare_of(checked), decision_of(checked)
     filled: dict[str, dict[str, Any]] = {
         "": {"title": head.title or title},
@@ -220,7 +238,7 @@ def _built(checked: Checked, known: Mapping[str, Method], title: str) -> Plan:
         outcome=outcome,
         sizes=sample.sizes,
         standard=standard_of(checked),
-        design=entry.frame(),
+        design=design,
         simulation=simulation,
         methods=tuple(method for name, method in known.items() if name in only),
         prefer=tuple(known[name] for name in prefer),

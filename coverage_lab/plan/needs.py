@@ -16,8 +16,8 @@ SUFFICIENT: tuple[KeyPath, ...] = (
     ("decision", "goal"),
 )
 STATED = "expected the key range or expected"
-ONLY_SIZED = ("population", "design_effect", "cluster_size", "loss")  # of [design]: what an audit does not simulate
-NOT_AUDITED = "to be left out of an audit, which draws simple random samples without losses; sample-size takes it"
+ONLY_SIZED = ("population", "design_effect", "cluster_size")  # of a simple [design]: what an audit does not simulate
+NOT_AUDITED = "to be left out of an audit of a simple random sample; sample-size takes it, or another kind of design"
 
 
 def audit_faults(plan: Plan) -> tuple[str, ...]:
@@ -32,7 +32,7 @@ def for_audit(document: Mapping[str, Any]) -> Iterator[Fault]:
     if not any(_has(document, ("sample", key)) for key in ("n", "candidates")):
         yield Fault(("sample",), "expected the key n or candidates, which an audit needs", where="[sample]")
     design = document.get("design")
-    given = design if isinstance(design, Mapping) else {}
+    given = design if isinstance(design, Mapping) and design.get("kind", "simple") == "simple" else {}
     yield from (Fault(("design", key), NOT_AUDITED, given[key]) for key in ONLY_SIZED if key in given)
 
 

@@ -39,7 +39,7 @@ def available(extra: Extra | None = None) -> dict[str, Method]:
 
 def known_methods(extra: Extra) -> tuple[dict[str, Method], list[str]]:
     """Every method by name, and a line for each that cannot be had."""
-    known, faults = dict(intervals.CATALOGUE), []
+    known, faults = dict(intervals.EVERY), []
     loaded: list[tuple[str, object]] = []
     for entry in importlib.metadata.entry_points(group=ENTRY_POINTS):
         try:

@@ -45,6 +45,12 @@ def distinct(items: list[Any]) -> list[Any]:
     return items
 
 
+def _told_apart(strata: list["StratumTable"]) -> list["StratumTable"]:
+    """Strata without repeated names."""
+    distinct([stratum.name for stratum in strata])
+    return strata
+
+
 def _range(ends: list[float]) -> list[float]:
     """[low, high], in order, with something between 0 and 1 to estimate."""
     if not (len(ends) == 2 and 0 <= ends[0] <= ends[1] <= 1 and ends[1] > 0 and ends[0] < 1):
@@ -72,6 +78,7 @@ SHARE = "a number strictly between 0 and 1"
 FACTOR = "a number above 0, a multiple of alpha"
 NAMES = "a list of different method names, at least one"
 SIZE = between(1, LARGEST_N)
+STRATUM = "name (text), weight (a number), n (a whole number) and, if needed, odds_ratio (a number)"
 
 Words = Annotated[str, AfterValidator(_text)]
 OneLine = Annotated[str, AfterValidator(_one_line)]
@@ -183,6 +190,15 @@ class StandardTable(Table):
         return self
 
 
+class StratumTable(Table):
+    """One of [[design.strata]]: a part of the population that is sampled by itself."""
+
+    name: OneLine
+    weight: float
+    n: Annotated[int, Field(ge=0, le=LARGEST_N)]
+    odds_ratio: float = 1.0
+
+
 class DesignTable(Table):
     """[design]: how the sample is drawn. Which kinds exist is for the catalogue of designs to say."""
 
@@ -193,7 +209,16 @@ class DesignTable(Table):
     design_effect: Annotated[float, Field(gt=0, le=MOST_EFFECT)] | None = Field(
         None, description=f"a number above 0, at most {MOST_EFFECT}"
     )
-    cluster_size: Size | None = Field(None, description=SIZE)
+    cluster_size: Size | Annotated[list[Size], Field(min_length=1)] | None = Field(
+        None, description=f"{SIZE}, or a list of such numbers, one a cluster"
+    )
+    cluster_cv: float | None = Field(None, description="a number of at least 0")
+    icc: float | None = Field(None, description="a number of at least 0 and below 1")
+    strata: Annotated[list[StratumTable], AfterValidator(_told_apart), Field(min_length=1)] | None = Field(
+        None,
+        description=f"a list of strata with different names, each with {STRATUM}",
+        json_schema_extra=_item(STRATUM),
+    )
 
 
 class SimulationTable(Table):

@@ -1,6 +1,6 @@
 """What a plan may ask of its n: [precision], [rare], [decision]; and what the sample has to make up for."""
 
-from typing import Annotated, ClassVar, Self
+from typing import Annotated, ClassVar, Literal, Self
 
 from pydantic import AfterValidator, Field, model_validator
 
@@ -12,6 +12,11 @@ UNSEEN = "to be left out unless see_at_least is given"
 
 Events = Annotated[int, Field(ge=0, le=MOST_EVENTS)]
 Rate = Annotated[float, Field(ge=0, lt=1)]
+RATE = "a number of at least 0 and below 1"
+CHANCE = "a number from 0 to 1"
+MOST_TESTED = 1_000_000
+TESTED = between(1, MOST_TESTED)
+Tested = Annotated[int, Field(ge=1, le=MOST_TESTED)]
 
 
 class TargetTable(Table):
@@ -93,10 +98,34 @@ class DecisionTable(TargetTable):
 class LossTable(TargetTable):
     """[design.loss]: units that yield no result."""
 
-    rate: Rate | None = Field(None, description="a number of at least 0 and below 1", json_schema_extra=PERCENT)
+    rate: Rate | None = Field(None, description=RATE, json_schema_extra=PERCENT)
+    rate_events: Rate | None = Field(None, description=RATE, json_schema_extra=PERCENT)
+    rate_others: Rate | None = Field(None, description=RATE, json_schema_extra=PERCENT)
+    treat_as: Literal["excluded", "events", "non-events"] = Field(
+        "excluded", description="excluded, events or non-events"
+    )
 
     @model_validator(mode="after")
     def _holds_together(self) -> Self:
-        if self.rate is None:
-            raise between_keys("needs", "the key rate")
+        by_outcome = {"rate_events": self.rate_events, "rate_others": self.rate_others}
+        given = [key for key, rate in by_outcome.items() if rate is not None]
+        if self.rate is None and len(given) < len(by_outcome):
+            raise between_keys("needs", "the key rate, or both rate_events and rate_others")
+        if self.rate is not None and given:
+            raise between_keys("field", "to be left out, since rate is given", given[0])
+        return self
+
+
+class ClassificationTable(TargetTable):
+    """[design.classification]: the test that units are seen through."""
+
+    sensitivity: float | None = Field(None, description=CHANCE, json_schema_extra=PERCENT)
+    specificity: float | None = Field(None, description=CHANCE, json_schema_extra=PERCENT)
+    diseased_tested: Tested | None = Field(None, description=TESTED)
+    healthy_tested: Tested | None = Field(None, description=TESTED)
+
+    @model_validator(mode="after")
+    def _holds_together(self) -> Self:
+        if self.sensitivity is None or self.specificity is None:
+            raise between_keys("needs", "the keys sensitivity and specificity")
         return self

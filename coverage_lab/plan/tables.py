@@ -12,7 +12,15 @@ TABLES: dict[str, type[schema.Table]] = {
     "decision": targets.DecisionTable,
     "standard": schema.StandardTable,
     "design": schema.DesignTable,
+    "design.classification": targets.ClassificationTable,
     "design.loss": targets.LossTable,
     "simulation": schema.SimulationTable,
     "methods": schema.MethodsTable,
+}
+
+# What a layer of the design may say, by its name.
+LAYER_KEYS: dict[str, tuple[str, ...]] = {
+    name.removeprefix("design."): tuple(model.model_fields)
+    for name, model in TABLES.items()
+    if name.startswith("design.")
 }

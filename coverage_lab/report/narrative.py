@@ -142,7 +142,9 @@ def _robustness(document: Document, row: Row) -> Iterator[tuple[str, str]]:
 def _how_sure(document: Document, row: Row | None) -> str:
     """By which routes the figures were had, and how well these agree."""
     found = []
-    if "enumerated" in (document["plan"]["simulation"].get("routes") or ("enumerated",)):
+    if "enumerated" in (document["plan"]["simulation"].get("routes") or ("enumerated",)) and (
+        row is None or row["minimum_is"] != "simulated"
+    ):
         found.append(
             "For a given true proportion the probability of every count is known, and so is the interval that each "
             "count would give: interval coverage is the sum of the probabilities of the counts whose interval contains "
@@ -200,7 +202,8 @@ def _kept(document: Document, row: Row, promised: str) -> str:
     """How often the promise is kept, beside plus-or-minus."""
     low, high = planned_range(document)
     where = f"lies between {place(low)} and {place(high)}" if low < high else f"is {place(low)}"
-    simulated = " in simulated studies" if row["minimum_is"] == "simulated" else ""
+    found = {"simulated": " in simulated studies", "searched": ", the lowest that a search found"}
+    simulated = found.get(row["minimum_is"], "")
     kept = (
         f"If such a study were repeated many times, the {_noun(document)} would be right in at least {least(row)} of "
         f"the repetitions{simulated}, and in {share(row['mean_coverage'], 'down')} on average, provided that the true "

@@ -2,11 +2,13 @@
 
 import re
 
+from coverage_lab.report.design_words import design_words
 from coverage_lab.report.words import (
     WIDTHS,
     Document,
     Row,
     count,
+    how_averaged,
     how_sure,
     least,
     level,
@@ -18,7 +20,6 @@ from coverage_lab.report.words import (
     simulation_words,
     standard_words,
     tail,
-    weighting,
 )
 from coverage_lab.rounding import percent
 
@@ -77,7 +78,7 @@ def _interval(document: Document, row: Row | None) -> str:
 
 
 def _sample_size(document: Document) -> str:
-    return f"n = {count(document['verdict']['n'])}; sampling model: {document['plan']['design']['kind']} random sample."
+    return f"n = {count(document['verdict']['n'])}; sampling model: {design_words(document)}."
 
 
 def _range(document: Document) -> str:
@@ -98,7 +99,7 @@ def _standard(document: Document) -> str:
 def _delivers(document: Document, row: Row | None) -> str:
     if row is None:
         return "No method is named, so nothing is claimed here."
-    mean = "simulated, over the grid" if row["minimum_is"] == "simulated" else f"exact, {weighting(document)}"
+    mean = how_averaged(document, row)
     found = [
         f"Over the planned range the worst interval coverage is {least(row)} ({how_sure(row)}) and the mean is "
         f"{share(row['mean_coverage'], 'down')} ({mean}); {WIDTHS[document['side']]} {points(row['mean_width'])}."

@@ -18,6 +18,7 @@ from coverage_lab.report.words import (
     Row,
     agreement,
     count,
+    how_averaged,
     how_sure,
     label_of,
     least,
@@ -31,7 +32,6 @@ from coverage_lab.report.words import (
     simulation_words,
     sizes,
     steady_words,
-    weighting,
 )
 from coverage_lab.rounding import percent
 from coverage_lab.sentences import OF_SIMULATION
@@ -131,7 +131,7 @@ def headline(document: Document) -> str:
 
 def facts(document: Document, row: Row) -> list[Fact]:
     """The figures behind the answer: how good at worst, how sure, at what price, and on how wide a range."""
-    mean = "simulated, over the grid" if row["minimum_is"] == "simulated" else f"exact, {weighting(document)}"
+    mean = how_averaged(document, row)
     width = WIDTHS[document["side"]].capitalize()
     found = [
         Fact("Worst interval coverage in the planned range", least(row), how_sure(row)),

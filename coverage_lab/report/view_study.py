@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 
+from coverage_lab.report.design_words import design_words
 from coverage_lab.report.folder import Saved
 from coverage_lab.report.protocol import pieces
 from coverage_lab.report.words import (
@@ -41,7 +42,7 @@ def plan_rows(document: Document) -> list[tuple[str, list[tuple[str, bool]]]]:
         ("n", joined(count(n) for n in sizes(document))),
         ("Confidence and side", f"{level(document)}; α = {document['alpha']:g}. {beside_alpha(document)}"),
         ("Standard", f"{document['standard']['kind']}: {standard_words(document)}"),
-        ("Sampling model", f"{plan['design']['kind']} random sample"),
+        ("Sampling model", design_words(document)),
         ("Simulation", f"{count(drawn['replicates'])} draws at {each(len(drawn['grid']))}, seed {drawn['seed']}"),
         ("Who may be named", f"{listed}, first choice first"),
     ]
@@ -82,7 +83,7 @@ def _mechanisms(saved: Saved) -> str:
         n = joined(count(size) for size in sizes(saved.document))
         told.append(
             f"At {each(len(grid))}, {range_words(grid[0], grid[-1])}, and each n ({n}), {count(drawn['replicates'])} "
-            f"samples were drawn from the sampling model ({plan['design']['kind']} random sample), seed "
+            f"samples were drawn from the sampling model ({design_words(saved.document)}), seed "
             f"{drawn['seed']}; every method sees the same draws."
         )
     else:

@@ -4,6 +4,7 @@ import math
 from collections.abc import Iterable, Mapping
 from typing import Any
 
+from coverage_lab.report.design_words import design_words
 from coverage_lab.rounding import Towards, percent, rounded
 
 Document = Mapping[str, Any]
@@ -175,6 +176,14 @@ def weighting(document: Document) -> str:
     return f"proportions weighted by a Beta({prior[0]:g}, {prior[1]:g}) distribution cut to the range"
 
 
+def how_averaged(document: Document, row: Row) -> str:
+    """What the mean coverage of a method is a mean of."""
+    if row["minimum_is"] == "simulated":
+        return "simulated, over the grid"
+    exact = "exact" if row["minimum_is"] == "certified" else "of exact values at many proportions"
+    return f"{exact}, {weighting(document)}"
+
+
 def simulation_words(row: Row, document: Document) -> str | None:
     """What the simulation of a method showed, or None when it was not simulated."""
     drawn = row["simulated"]
@@ -184,7 +193,7 @@ def simulation_words(row: Row, document: Document) -> str | None:
     over = f" ({range_words(grid[0], grid[-1])})" if len(grid) > 1 else ""
     studies = (
         f"In {count(drawn['replicates'])} simulated studies at {each(len(grid))}{over}, each a "
-        f"{document['plan']['design']['kind']} random sample of n = {count(row['n'])}, "
+        f"{design_words(document)}, n = {count(row['n'])}, "
     )
     what = f"{row['label']} {NOUNS[document['side']]}"
     if drawn["coverage_min"] == 1:

@@ -1,7 +1,8 @@
 """Clustered simulation against the plain way, in one run: 100 000 replicates, all cluster methods together.
 
 The plain way draws a proportion for every cluster, then its events, and evaluates every method on every replicate, all
-in NumPy. The package draws equal clusters by table, counts equal samples once, and evaluates each method on what is left.
+in NumPy. The package draws equal clusters by table, counts equal samples once, and evaluates each method on what is
+left.
 
     python tests/benchmarks/clusters.py
 """
