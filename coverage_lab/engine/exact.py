@@ -40,8 +40,8 @@ def possible(part: Part, low: float, high: float, floor: float = 1e-18) -> Count
     """Every events count whose probability exceeds the floor somewhere in [low, high]."""
     if part.population is not None:
         return np.arange(likely(part.trials, low, floor)[0], likely(part.trials, high, floor)[1] + 1)
-    ends = np.sort(part.chance(np.array([low, high]))).tolist()
-    first, last = window(part.trials, *ends, floor)
+    least, most = np.sort(part.chance(np.array([low, high])))
+    first, last = window(part.trials, float(least), float(most), floor)
     return np.arange(first, last + 1)
 
 
